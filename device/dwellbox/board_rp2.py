@@ -52,7 +52,6 @@ _PUMP = const(16)
 _ADDRESS_A = const(0x48)  # ADDR to ground
 _ADDRESS_B = const(0x49)  # ADDR to VDD
 _AIN = (0, 1, 2, 3, 0, 1)  # converter input by channel code: part, supply, thermistor, reference a | shunt, reference b
-_FULL_MV = const(650000)
 _PERIOD_MS = const(5)
 _WATCHDOG_MS = const(2000)
 _SCRATCH = const(0x4005800C)  # watchdog scratch register 0: survives a reset, not a power cut
@@ -131,7 +130,8 @@ class BoardRp2(Board):
     def supply_mv(self, mv):
         """Set the supply."""
         if mv != self._mv:
-            self._pwm.duty_u16(mv // 10 * 65535 // (_FULL_MV // 10) if mv < 163000 else mv // 100 * 65535 // 6500)
+            centivolts = mv // 10
+            self._pwm.duty_u16(centivolts + centivolts * 535 // 65000)  # 650 V is 65535, in small integers
             self._mv = mv
 
     def pump(self):

@@ -9,14 +9,17 @@ from ..codes import END_OPEN, END_OVER_ENERGY, END_REVERSED, END_SHORT, END_VALU
 from ..compat import const, ticks_diff
 from ..stage import GO, NEXT, POLAR_STALL_MV, ends
 
-_LOOK_RAMP = const(20000)  # millivolts a second
-_LOOK_ARM_MS = const(30)  # relays
-_LOOK_PICK_MS = const(200)  # into the ramp: choose the shunt
-_LOOK_HOLD_MS = const(400)
-_LOOK_MOST_MS = const(20000)
-_LOOK_STALL_MS = const(6000)
+_RAMP = const(20000)  # millivolts a second
+_ARM_MS = const(30)  # relays
+_PICK_MS = const(200)  # into the ramp: choose the shunt
+_BLANK_MS = const(65)  # the shunt's relay and the node behind it
+_HOLD_MS = const(500)  # after the ramp, for what still flows
+_LEAST_RISE_MV = const(1000)  # enough of a large part
+_MOST_MS = const(20000)
+_STALL_MS = const(6000)
 _STALL_MV = const(5000)
-_OPEN_PF = const(20)
+_STALL_RISE_MV = const(50)  # in two seconds, with the whole current flowing: 500 uF would rise 200 mV
+_OPEN_PF = const(20)  # above what an empty fixture has
 
 
 class Look:
@@ -26,13 +29,13 @@ class Look:
         """Allocate nothing afterwards."""
         self._phase = 0
         self._phase_ms = 0
-        self._counting = False
-        self._fc = 0  # charge in femtocoulombs on the high shunts, picocoulombs on the low one
-        self._area = 0  # millivolt milliseconds
-        self._from_mv = 0
+        self._last_ms = 0
         self._mark_mv = 0
         self._mark_ms = 0
-        self._last_ms = 0
+        self._from_mv = 0
+        self._fc = 0  # charge so far, femtocoulombs
+        self._area = 0  # voltage times time so far, mV ms
+        self._half = (0, 0, 0)  # charge, rise and area at the end of the ramp
 
     def begin(self, bench, now):
         """Empty what the proof of the way down left, first bleed still closed."""
@@ -42,7 +45,6 @@ class Look:
         bench.relay(False, True)
         self._phase = 0
         self._phase_ms = now
-        self._counting = False
 
     def step(self, bench, now):
         """One phase after another."""
@@ -62,17 +64,17 @@ class Look:
         return self._turn(now)
 
     def _arm(self, bench, now):
-        if ticks_diff(now, self._phase_ms) < _LOOK_ARM_MS:
+        if ticks_diff(now, self._phase_ms) < _ARM_MS:
             return GO
         bench.supply.mv = 0
-        bench.supply.ramp(bench.ratings.look_mv, _LOOK_RAMP, now)
+        bench.supply.ramp(bench.ratings.look_mv, _RAMP, now)
         self._mark_mv = 0
         self._mark_ms = now
         return self._turn(now)
 
     def _pick(self, bench, now):
         """A fifth of a second into the ramp the current says which shunt reads it."""
-        if ticks_diff(now, self._phase_ms) < _LOOK_PICK_MS:
+        if ticks_diff(now, self._phase_ms) < _PICK_MS:
             return GO
         front = bench.front
         current = front.na(front.shunt_code)
@@ -83,36 +85,35 @@ class Look:
         return self._turn(now)
 
     def _blank(self, bench, now):
-        if ticks_diff(now, self._phase_ms) < 65 or not bench.front.part_fresh:
+        if ticks_diff(now, self._phase_ms) < _BLANK_MS or not bench.front.part_fresh:
             return GO
         self._fc = 0
         self._area = 0
         self._from_mv = bench.front.part_mv
         self._last_ms = now
-        self._counting = True
         return self._turn(now)
 
     def _count(self, bench, now):
-        """Integrate until the ramp and its hold are over, or enough has been seen of a large part."""
+        """Integrate until the ramp and its hold are over and enough has been seen."""
         front = bench.front
         step_ms = ticks_diff(now, self._last_ms)
         self._last_ms = now
         code = front.shunt_code
-        self._fc += (front.pa(code) if front.shunt else front.na(code)) * step_ms
-        self._area += (front.part_mv - self._from_mv) * step_ms
-        gone = ticks_diff(now, self._phase_ms)
+        self._fc += (front.pa(code) if front.shunt else front.na(code) * 1000) * step_ms
+        self._area += front.part_mv * step_ms
+        if bench.supply.ramping:
+            self._half = (self._fc, front.part_mv - self._from_mv, self._area)
+            self._phase_ms = now
+            return GO
         if not bench.window:
             return GO
-        mv = front.mean_part_mv
-        top = bench.ratings.look_mv
-        stalled = self._stalls(bench, mv, now)
+        stalled = self._stalls(bench, front.mean_part_mv, now)
         if stalled:
             return stalled
-        over = not bench.supply.ramping and gone > 1000 + _LOOK_HOLD_MS
-        near = mv > top * 9 // 10
-        enough = gone > 2500 and front.part_mv - self._from_mv > 1000
-        if (over and near) or enough or gone > _LOOK_MOST_MS:
-            return self._found(bench, now, near)
+        gone = ticks_diff(now, self._phase_ms)
+        rise = front.part_mv - self._from_mv
+        if (gone >= _HOLD_MS and rise > _LEAST_RISE_MV) or gone > _MOST_MS:
+            return self._found(bench, rise)
         return GO
 
     def _stalls(self, bench, mv, now):
@@ -124,7 +125,7 @@ class Look:
         self._mark_ms = now
         front = bench.front
         shunt_na = front.na(front.mean_code10) // 10
-        if bench.gone(now) < _LOOK_STALL_MS or mv >= _STALL_MV or rise > 50:
+        if bench.gone(now) < _STALL_MS or mv >= _STALL_MV or rise > _STALL_RISE_MV:
             return GO
         if shunt_na * 10 < bench.path_na() * 8:
             return GO
@@ -132,21 +133,18 @@ class Look:
         bench.short_na = shunt_na
         return ends(END_REVERSED if bench.plan.polar and mv > POLAR_STALL_MV else END_SHORT)
 
-    def _found(self, bench, now, settled):
-        """Turn charge and voltage into a capacitance and compare it with what was expected."""
-        front = bench.front
-        rise = front.part_mv - self._from_mv
-        if rise < 100:
-            rise = 100
-        pc1000 = self._fc if front.shunt else self._fc * 1000  # femtocoulombs
-        if settled:  # what still flows at a standing voltage is leakage, in proportion to the voltage
-            code10 = front.mean_code10
-            leak_pa = (front.pa(code10) if front.shunt else front.na(code10) * 1000) // 10
-            area = self._area + self._from_mv * ticks_diff(now, self._phase_ms)
-            pc1000 -= leak_pa * area // (front.mean_part_mv if front.mean_part_mv > 1000 else 1000)
-        pf = pc1000 // rise  # fC / mV = pF
-        if pf < 0:
-            pf = 0
+    def _found(self, bench, rise):
+        """Solve charge = C rise + G area over the ramp and over the hold: what leaks is not taken for capacitance."""
+        charge1, rise1, area1 = self._half
+        charge2 = self._fc - charge1
+        rise2 = rise - rise1
+        area2 = self._area - area1
+        below = rise1 * area2 - rise2 * area1
+        if below > 0:
+            pf = (charge1 * area2 - charge2 * area1) // below  # fC / mV = pF
+        else:
+            pf = self._fc // max(rise, 1)
+        pf = max(pf, 0)
         bench.capacitance_pf = pf
         bench.capacitance_nf = pf // 1000
         return self._verdict(bench, pf)

@@ -63,7 +63,10 @@ class Prove:
         off = mv - want_mv
         if -mv <= off * 10 <= mv:
             self._good += 1
-            return NEXT if self._good >= 2 else GO
+            if self._good < 2:
+                return GO
+            bench.proof.followed = True  # the divider has read, in this run, what the circuit made of a known voltage
+            return NEXT
         self._good = 0
         return faults(FAULT_WAY_DOWN) if gone > _PROVE_STALL_MS else GO
 
