@@ -2,107 +2,248 @@
 
 A board asks for nothing but `period`, `inputs`, `codes` and the few flags; what only a test may know is behind `truth`.
 Nothing here reads a clock or sleeps: time passes when `period` is called, and the same scenario, seed and calls give the
-same codes on every machine.
+same codes on every machine. This file is the periods; what is in the box and who is at it is bench_model.py.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import Any
 
+from dwellbench.emulator.bench_model import PERIOD_US, BenchModel
+from dwellbench.emulator.converters import calibration
+from dwellbench.emulator.dice import TABLE_SIZE, noise_table
+from dwellbench.emulator.reference import bits, box, channels
+from dwellbench.emulator.relays import BLEED, CHARGE, LOW, MID
 from dwellbench.emulator.scenario import Scenario
 
-PERIOD_US = 5000
 NO_CODE = 40000
 """What `codes` holds when the chip did not answer or nothing was started."""
 NO_CONVERSION = -1
 CAUSE_POWER, CAUSE_RESET = 0, 1
+_WRAP = 1 << 30
+_TABLE_MASK = TABLE_SIZE - 1
+_PART, _SUPPLY, _SHUNT = channels()["part"], channels()["supply"], channels()["shunt"]
+_IN, _OUT = bits("inputs"), bits("outputs")
+_COILS = ((BLEED, _OUT["bleed_open"]), (CHARGE, _OUT["charge"]), (MID, _OUT["mid_shunt"]), (LOW, _OUT["low_open"]))
+_RELEASE = _OUT["release"]
 
 
-@dataclass(frozen=True)
-class Harm:
-    """Someone could have touched a charged part: when, what was on it, how it came about."""
-
-    t_s: float
-    volts: float
-    stored_J: float
-    why: str
-
-
-@dataclass(frozen=True)
-class Truth:
-    """What is really so at this instant; for tests and nobody else. Volts, joules, coulombs."""
-
-    t_s: float
-    part_index: int  # into scenario.parts, 0 the first; -1 while nothing is fitted
-    part_label: str
-    part_V: float  # across the part's own plates, whatever its leads do
-    node_V: float  # high node to ground
-    low_V: float
-    supply_V: float
-    stored_J: float
-    stored_C: float
-    capacitance_F: float
-    leakage_A: float  # conduction through the part alone, absorption left out
-    lid_open: bool
-    bolt_closed: bool
-    harms: tuple[Harm, ...]  # every one since the start
-
-    @property
-    def hurt(self) -> bool:
-        return bool(self.harms)
-
-
-class World:
+class World(BenchModel):
     """`World(scenario, seed)`; `seed` None takes the scenario's.
 
     Call `period` once every 5 ms of virtual time with what the controller put out; then read `inputs` and `codes`.
+
+    inputs            raw levels after the period, bits as codes.json `inputs`
+    codes             two codes, converter 0 and 1, of the conversions started at the beginning of the period
+    now_us            virtual time since power-up, microseconds; goes on through resets
+    controller_hung   while True the controller must not be stepped: call `period` with outputs held, nothing else
+    link_silent       while True no byte passes either way
+    unique_id         16 hex digits, from the seed
+    calibration       as the box keeps it, drawn within its own stated uncertainty; None if `[front_end] calibrated = false`
+    truth             what is really so, for tests only
     """
 
-    inputs: int
-    """Raw levels after the period, bits as codes.json `inputs`."""
-    codes: list[int]
-    """Two codes: converter 0 and 1, of the conversions started at the beginning of the period; NO_CODE if silent or none."""
-    now_us: int
-    """Virtual time since power-up, microseconds; goes on through resets."""
-    controller_hung: bool
-    """While True the controller must not be stepped: call `period` with the outputs held, no pumps, no feeds, no conversions."""
-    link_silent: bool
-    """While True no byte passes either way."""
-    unique_id: str
-    """16 hex digits, from the seed."""
-    calibration: dict[str, Any]
-    """In the form the box keeps: drawn from the seed within its own stated uncertainty of the true errors."""
-    truth: Truth
-
     def __init__(self, scenario: Scenario, seed: int | None = None) -> None:
-        raise NotImplementedError
+        super().__init__(scenario, scenario.seed if seed is None else seed)
+        self.codes = [NO_CODE, NO_CODE]
+        self.inputs = 0
+        self._table = noise_table()
+        self._noise_at = self._noise_step = 1
+        self._outputs = 0
+        self._pumped_us = self._fed_us = -1
+        self._hv = False
+        self._reset = -1
+        keep = (scenario.front_end or {}).get("calibrated", True)
+        self.calibration = calibration(self.errors, self.seed, self.unique_id, scenario.ambient_C) if keep else None
+        wrap = [round(f.at_s * 1e3) for f in scenario.faults if f.kind == "clock_wrap"]
+        self.clock_offset_ms = (_WRAP - wrap[0]) if wrap else scenario.clock_ms
+        self._pump_hold_us = round(box().pump_hold_s * 1e6)
+        self._watchdog_us = round(box().watchdog_s * 1e6)
+        self._housekeep()
+        self._sense()
+
+    # -- what a board calls
 
     def period(self, outputs: int, supply_mv: int, pumps: int, feeds: int, conv0: int, conv1: int) -> None:
         """Advance 5 ms. `outputs` bits as codes.json; `pumps`, `feeds`: how often the enable was toggled, the watchdog fed;
         `conv0`, `conv1`: channel * 2 + range of the conversion started on each converter, or NO_CONVERSION.
 
-        `codes` then holds what those conversions give (mean over the chip's own 4 ms of this period).
+        `codes` then holds what those conversions give (mean over the chip's own 4 ms of this period). KeyError for a channel
+        that the converter does not have.
         """
-        raise NotImplementedError
+        now = self.now_us
+        supply, circuit = self.supply, self.circuit
+        if outputs != self._outputs:
+            self._drive(outputs)
+        if pumps:
+            self._pumped_us = now
+            if not supply.on:
+                self._switch_supply()
+        elif supply.on and now - self._pumped_us >= self._pump_hold_us:
+            self._switch_supply()
+        if feeds:
+            self._fed_us = now
+        elif 0 <= self._fed_us < now - self._watchdog_us:
+            self.ask_reset()
+        if supply_mv != supply.setting_mv:
+            supply.setting_mv = supply_mv
+            supply.moving = True
+        if supply.moving and supply.on:
+            slope, volts = supply.slope(circuit.s, now)
+            circuit.set_supply(volts)
+            circuit.set_slope(slope)
+        self.now_us = end = now + PERIOD_US
+        if self.next_us < end:
+            circuit.period(self._due(now, end))
+        else:
+            circuit.period()
+        high = abs(circuit.high_mean)
+        if high > self.errors.detector_on_V if not self._hv else high < self.errors.detector_off_V:
+            self._hv = not self._hv
+            self._sense()
+        if self.lid.is_open:
+            self.watch_hands()
+        self._convert(conv0, conv1)
 
     def clock_ms(self) -> int:
         """The controller's millisecond counter, 0..2**30-1; wraps; jumps if a fault makes it."""
-        raise NotImplementedError
+        return (self.now_us // 1000 + self.clock_offset_ms) % _WRAP
 
     def take_reset(self) -> int:
-        """-1, or CAUSE_POWER / CAUSE_RESET once when the controller is to start anew now (watchdog, fault). The board drops
-        RAM (and scratch after a power loss), and until the new controller puts something out, calls with outputs 0."""
-        raise NotImplementedError
+        """-1, or CAUSE_POWER / CAUSE_RESET once when the controller is to start anew now (watchdog, fault, power). The board
+        drops RAM (and scratch after a power loss) and calls with outputs 0 until the new controller puts something out."""
+        cause, self._reset = self._reset, -1
+        if cause >= 0:
+            self._fed_us = -1
+            self.controller_hung = False
+        return cause
 
     def run_began(self) -> None:
         """The board tells that a run has begun (the marker is being kept), so that faults with `run` and `at_s` find it and
         the operator knows what the next release of the lock means. Without it a run is seen when the supply is first pumped."""
-        raise NotImplementedError
+        self.begin_run()
+
+    # -- inside a period
+
+    def ask_reset(self) -> None:
+        """The controller is to start anew."""
+        self._reset = max(self._reset, CAUSE_RESET)
+
+    def set_power(self, on: bool) -> None:
+        """The whole box loses its power, or has it again."""
+        self.powered = on
+        self.controller_hung = not on
+        if on:
+            self._reset = CAUSE_POWER
+            self.clock_offset_ms = -(self.now_us // 1000)
+        self._pumped_us = -1
+        self._drive(0)
+        self._switch_supply()
+
+    def _drive(self, outputs: int) -> None:
+        self._outputs = outputs if self.powered else 0
+        self._wire()
+
+    def _wire(self) -> None:
+        """Coils and lock, as outputs and wiring let them: the charge relay's coil needs the lid, the release the detector."""
+        for relay, mask in _COILS:
+            on = bool(self._outputs & mask)
+            self.relays.drive(relay, on and (relay != CHARGE or self.lid.wired), self.now_us)
+        gate = not (self._hv if self.detector_stuck is None else self.detector_stuck)
+        self.lid.power(bool(self._outputs & _RELEASE) and gate, self.now_us)
+        self.find_next()
+
+    def _switch_supply(self) -> None:
+        """On while pumped, enabled by the lid's wiring, and powered."""
+        supply = self.supply
+        pumped = 0 <= self._pumped_us and self.now_us - self._pumped_us < self._pump_hold_us
+        on = self.powered and self.lid.wired and (pumped or supply.fault.always_enabled or supply.fault.stuck_V is not None)
+        if on != supply.on:
+            supply.on = on
+            self.supply_switched(on)
+
+    def _due(self, now: int, end: int) -> list[Any]:
+        """What happens in this period: mechanics at its beginning, contacts at their own microseconds."""
+        if self.tick(now):
+            self._housekeep()
+        self._switch_supply()
+        self._wire()
+        self._sense()
+        return self.contact_changes(now, end)
+
+    def _housekeep(self) -> None:
+        """Now and then: go on at another place of the noise table, in another stride."""
+        self._noise_at = self.chance.bits() & _TABLE_MASK
+        self._noise_step = self.chance.bits() & _TABLE_MASK | 1
+
+    def _sense(self) -> None:
+        hv = self._hv if self.detector_stuck is None else bool(self.detector_stuck)
+        lid = self.lid
+        level = (
+            (_IN["lid_a"] if lid.closed_a else 0)
+            | (0 if lid.closed_b else _IN["lid_b"])
+            | (_IN["stop"] if self.stop_pressed else 0)
+            | (_IN["hv"] if hv else 0)
+            | (_IN["locked"] if lid.bolt else 0)
+        )
+        if (level ^ self.inputs) & _IN["hv"]:
+            self.inputs = level
+            self._wire()
+        self.inputs = level
+
+    def _convert(self, conv0: int, conv1: int) -> None:
+        codes, circuit = self.codes, self.circuit
+        codes[0] = codes[1] = NO_CODE
+        if conv0 >= 0:
+            scale, offset, noise = self.lines[0][conv0]
+            channel = conv0 >> 1
+            volts = (
+                circuit.high_mean
+                if channel == _PART
+                else circuit.supply_mean
+                if channel == _SUPPLY
+                else self.static_V[channel]
+            )
+            self._noise_at = at = (self._noise_at + self._noise_step) & _TABLE_MASK
+            code = volts * scale + offset + noise * self._table[at]
+            codes[0] = -32768 if code < -32768.0 else 32767 if code > 32767.0 else int(code + 32768.5) - 32768
+        if conv1 >= 0:
+            scale, offset, noise = self.lines[1][conv1]
+            channel = conv1 >> 1
+            volts = circuit.low_mean if channel == _SHUNT else self.static_V[channel]
+            self._noise_at = at = (self._noise_at + self._noise_step) & _TABLE_MASK
+            code = volts * scale + offset + noise * self._table[at]
+            codes[1] = -32768 if code < -32768.0 else 32767 if code > 32767.0 else int(code + 32768.5) - 32768
+        if self.chips_ill:
+            self._ill_codes()
+
+    def _ill_codes(self) -> None:
+        for unit in (0, 1):
+            stuck = self.stuck_code[unit]
+            if self.silent[unit] or not self.powered:
+                self.codes[unit] = NO_CODE
+            elif stuck is not None and self.codes[unit] != NO_CODE:
+                self.codes[unit] = stuck
+
+    # -- keeping
 
     def snapshot(self) -> dict[str, Any]:
-        """Everything that changes, JSON-able; `restore` on a World of the same scenario and seed goes on from there, same codes."""
-        raise NotImplementedError
+        """Everything that changes, JSON-able; `restore` on a World of the same scenario and seed goes on with the same codes."""
+        own = [self._noise_at, self._noise_step, self._outputs, self._pumped_us, self._fed_us, self._hv, self._reset]
+        return {"seed": self.seed, "own": own, "codes": list(self.codes), "inputs": self.inputs, **self.model_state()}
 
     def restore(self, kept: dict[str, Any]) -> None:
-        raise NotImplementedError
+        """Take up a snapshot."""
+        if kept["seed"] != self.seed:
+            raise ValueError("the snapshot is of another seed")
+        self.load_model(kept)
+        self.codes, self.inputs = list(kept["codes"]), kept["inputs"]
+        (
+            self._noise_at,
+            self._noise_step,
+            self._outputs,
+            self._pumped_us,
+            self._fed_us,
+            self._hv,
+            self._reset,
+        ) = kept["own"]
