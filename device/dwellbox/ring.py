@@ -1,0 +1,121 @@
+"""The numbered ring: every sample, state, fault, end and log line, in one count since boot, kept for at least two minutes.
+
+A host that lost the link asks again from a number. The last run's events stay until the next run writes over them. Samples are
+packed into a buffer made once, so that keeping one allocates nothing; the rare others keep their words in a bounded table.
+"""
+
+import struct
+
+from .compat import const
+
+SAMPLE = const(0)
+STATE = const(1)
+FAULT = const(2)
+DONE = const(3)
+LOG = const(4)
+
+# kind, stage, shunt | range << 2 | vrange << 3, flags, t, sv, si, vmin, vmax, imin, imax, vs, temp, nv, ni, iclip
+_FORM = "<BBBBIiihhhhhhBBB"
+_SIZE = struct.calcsize(_FORM)
+_NOTES = const(120)  # events that are not samples: a run makes about a dozen
+
+
+class Ring:
+    """`n` is the number the next event gets; `first` the oldest still kept."""
+
+    def __init__(self, capacity):
+        """Make room for `capacity` events. Nothing below `note` allocates afterwards."""
+        self.capacity = capacity
+        self.n = 0
+        self.first = 0
+        self._rows = bytearray(capacity * _SIZE)
+        self._notes = {}
+
+    def _turn(self):
+        """Return the place of the next event and count it."""
+        at = self.n % self.capacity * _SIZE
+        self.n += 1
+        if self.n - self.first > self.capacity:
+            self.first = self.n - self.capacity
+        return at
+
+    def sample(
+        self, t, stage, shunt, range_, nv, sv, vmin, vmax, ni, si, imin, imax, iclip, vs, temp, flags, vrange
+    ):
+        """Keep one window. Allocates nothing."""
+        at = self._turn()
+        packed = shunt | range_ << 2 | vrange << 3
+        struct.pack_into(
+            _FORM, self._rows, at, SAMPLE, stage, packed, flags, t, sv, si, vmin, vmax, imin, imax, vs, temp, nv, ni, iclip
+        )
+
+    def state(self, t, state, stage, why):
+        """Keep a move. Allocates."""
+        self._note(STATE, t, (state, stage, why))
+
+    def fault(self, t, fault, state, value):
+        """Keep a fault. Allocates."""
+        self._note(FAULT, t, (fault, state, value))
+
+    def done(self, t, run, run_key, end, fault, extra):
+        """Keep the end of a run; `extra` is a list of (name, value). Allocates."""
+        self._note(DONE, t, (run, run_key, end, fault, extra))
+
+    def log(self, t, text):
+        """Keep a line for people. Allocates."""
+        self._note(LOG, t, (text,))
+
+    def _note(self, kind, t, words):
+        n = self.n
+        at = self._turn()
+        self._rows[at] = kind
+        notes = self._notes
+        if len(notes) >= _NOTES:
+            del notes[min(notes)]
+        notes[n] = (t, words)
+
+    def kind(self, n):
+        """Return the kind of a kept event."""
+        return self._rows[n % self.capacity * _SIZE]
+
+    def note(self, n):
+        """Return (t, words) of an event that is not a sample, or None when its words are gone."""
+        return self._notes.get(n)
+
+    def row(self, n, into):
+        """Unpack a sample's numbers after its `n` into the list `into` (17 places). Allocates nothing that stays."""
+        rows = self._rows
+        at = n % self.capacity * _SIZE
+        packed = rows[at + 2]
+        into[0] = _word(rows, at + 4) | _word(rows, at + 6) << 16
+        into[1] = rows[at + 1]
+        into[2] = packed & 3
+        into[3] = packed >> 2 & 1
+        into[4] = rows[at + 28]
+        into[5] = _long(rows, at + 8)
+        into[6] = _short(rows, at + 16)
+        into[7] = _short(rows, at + 18)
+        into[8] = rows[at + 29]
+        into[9] = _long(rows, at + 12)
+        into[10] = _short(rows, at + 20)
+        into[11] = _short(rows, at + 22)
+        into[12] = rows[at + 30]
+        into[13] = _short(rows, at + 24)
+        into[14] = _short(rows, at + 26)
+        into[15] = rows[at + 3]
+        into[16] = packed >> 3 & 1
+
+
+def _word(buffer, at):
+    return buffer[at] | buffer[at + 1] << 8
+
+
+def _short(buffer, at):
+    value = buffer[at] | buffer[at + 1] << 8
+    return value - 65536 if value & 0x8000 else value
+
+
+def _long(buffer, at):
+    """Return a signed 32-bit number that is known to fit 30 bits."""
+    high = _short(buffer, at + 2)
+    return (high << 16) + _word(buffer, at)
