@@ -56,7 +56,7 @@ class Controller:
         proof = Proof(self.ratings)
         self.bench.proof = proof
         self.course = Course(self.bench, proof, Latch(board), self.interlock, self.conditions, now)
-        self.wire = Wire(board, self.ring, Requests(self))
+        self.wire = Wire(board, self.ring, Requests(self), self.boot)
         self._last_ms = now
 
     def step(self):
