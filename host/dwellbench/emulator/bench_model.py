@@ -1,152 +1,50 @@
-"""The box's insides and the people around it, put together: circuit, relays, supply, lid, part, operator, faults.
+"""The box with parts, operator and faults around it.
 
 world.py steps it; here is what happens at the rarer moments, and the truth about it all.
 """
 
 from __future__ import annotations
 
+from copy import deepcopy
+from dataclasses import asdict
 from typing import Any
 
-from dwellbench.emulator import front_end
-from dwellbench.emulator.circuit import Circuit
-from dwellbench.emulator.converters import Line, lines, static_volts
-from dwellbench.emulator.dice import Dice
 from dwellbench.emulator.faults import NEVER_US, PART_KINDS, FaultClock
-from dwellbench.emulator.lid import Lid
-from dwellbench.emulator.network import CHARGE_MADE, CHARGE_NONE, CHARGE_REST, Switches
+from dwellbench.emulator.hardware import EMPTY, TICK_US, Hardware
+from dwellbench.emulator.network import CHARGE_REST
 from dwellbench.emulator.operator import Operator
 from dwellbench.emulator.parts import Fitted
-from dwellbench.emulator.reference import box, channels
-from dwellbench.emulator.relays import BLEED, CHARGE, LOW, MID, REST, TRAVEL, WORK, Relays
-from dwellbench.emulator.scenario import PartSpec, Scenario
-from dwellbench.emulator.supply import Supply
+from dwellbench.emulator.reference import box
+from dwellbench.emulator.scenario import Scenario
 from dwellbench.emulator.trouble import ACTS
 from dwellbench.emulator.truth import Harm, Truth
 
 PERIOD_US = 5000
-_TICK_US = 100_000  # temperature, slow changes of the part, noise
 _DRIFT_TICKS = 10
-_EMPTY = PartSpec(label="", open_lead=True)
-_CHARGE_SIDE = {REST: CHARGE_REST, TRAVEL: CHARGE_NONE, WORK: CHARGE_MADE}
+_PLAIN = (
+    "now_us paths fixture_S divider_factor reference_factor thermistor_fixed_V detector_stuck silent stuck_code "
+    "stop_pressed controller_hung link_silent powered clock_offset_ms celsius _warm_goal _warm_K_per_s part_index runs "
+    "_run_open _danger_known _foreign_part _why _tick_us _ticks _flaw_us"
+).split()
 
 
-class BenchModel:
+class BenchModel(Hardware):
     """Everything of the world that is not the stepping of a period."""
 
     def __init__(self, scenario: Scenario, seed: int) -> None:
-        self.scenario, self.seed = scenario, seed
-        self.now_us = 0
-        self.unique_id = f"{Dice(seed, 'unique id').bits():016x}"
-        self.errors = front_end.errors(seed, scenario.front_end)
-        self.chance = Dice(seed, "chance")
-        self._box_values = front_end.values(self.errors)
-        self._make_hardware(seed)
-        self._make_overrides()
+        super().__init__(scenario, seed)
         self.operator = Operator(scenario.operator)
         self.fault_clock = FaultClock(scenario.faults)
         self._fitted: dict[int, Fitted] = {}
         self.part_index = -1
-        self.part = Fitted(_EMPTY)
         self.runs = 0
         self._run_open = False
         self.harms: list[Harm] = []
-        self._danger_known = False
+        self._danger_known, self._why = False, ""
         self._foreign_part = False  # the part came in after the lid was opened: its charge is not the box's doing
-        self._tick_us, self._ticks = _TICK_US, 0
+        self._tick_us, self._ticks = TICK_US, 0
         self.next_us = 0
         self.fit(0)
-
-    def _make_hardware(self, seed: int) -> None:
-        e = self.errors
-        self.relays = Relays(e, Dice(seed, "relays"))
-        self.supply = Supply(e, Dice(seed, "supply"))
-        self.lid = Lid(e.bolt_ms, Dice(seed, "lid"))
-        omega = 6.283185307179586 * e.mains_Hz
-        self.circuit = Circuit(self._box_values, omega, front_end.windows_s(e), complex(e.mains_A), complex(e.ripple_V))
-
-    def _make_overrides(self) -> None:
-        """What faults change; each is back at its first value when the fault is over."""
-        self.paths = {"bleed_open": False, "bleed2_open": False, "charge_open": False, "divider_open": False}
-        self.fixture_S = 0.0
-        self.divider_factor = {"part": 1.0, "supply": 1.0}
-        self.reference_factor = [1.0, 1.0]
-        self.thermistor_fixed_V: float | None = None
-        self.detector_stuck: int | None = None
-        self.silent = [False, False]
-        self.stuck_code: list[int | None] = [None, None]
-        self.stop_pressed = self.controller_hung = self.link_silent = False
-        self.powered = True
-        self.clock_offset_ms = 0
-        self.celsius = self._warm_goal = self.scenario.ambient_C
-        self._warm_K_per_s = 0.0
-        self.rewire()
-
-    # -- converters
-
-    def rewire(self) -> None:
-        """Make the converters' lines anew (a fault changed them)."""
-        number = channels()
-        self.lines = lines(self.errors)
-        for name, factor in self.divider_factor.items():
-            for k in (0, 1):
-                row = self.lines[0][number[name] * 2 + k]
-                self.lines[0][number[name] * 2 + k] = Line(row.scale * factor, row.offset, row.noise)
-        volts = static_volts(self.errors, self.celsius)
-        if self.thermistor_fixed_V is not None:
-            volts["thermistor"] = self.thermistor_fixed_V
-        volts["reference_a"] *= self.reference_factor[0]
-        volts["reference_b"] *= self.reference_factor[1]
-        self.static_V = {number[name]: value for name, value in volts.items()}
-
-    @property
-    def chips_ill(self) -> bool:
-        """A converter is not as it should be."""
-        return not self.powered or True in self.silent or self.stuck_code != [None, None]
-
-    def warm_to(self, celsius: float, over_s: float) -> None:
-        """Let the part's surroundings go to `celsius`, evenly, in `over_s`."""
-        self._warm_goal = celsius
-        self._warm_K_per_s = (celsius - self.celsius) / max(over_s, 0.1)
-
-    def _warm(self) -> None:
-        if self.celsius == self._warm_goal:
-            return
-        step = self._warm_K_per_s * _TICK_US * 1e-6
-        left = self._warm_goal - self.celsius
-        self.celsius = self._warm_goal if abs(step) >= abs(left) else self.celsius + step
-        self.rewire()
-
-    # -- contacts
-
-    def _contacts(self) -> Switches:
-        position, link, paths = self.relays.position, self.part.link, self.paths
-        shunt = 0 if position[LOW] == REST else 1 if position[MID] == WORK else 2
-        return Switches(
-            charge=_CHARGE_SIDE[position[CHARGE]],
-            bleed=position[BLEED] == REST and not paths["bleed_open"],
-            shunt=shunt,
-            supply_on=self.supply.on,
-            connected=link.connected,
-            extra_S=link.extra_S,
-            charge_open=paths["charge_open"],
-            bleed2_open=paths["bleed2_open"],
-            divider_open=paths["divider_open"],
-            fixture_S=self.fixture_S,
-        )
-
-    def contact_changes(self, now: int, end: int) -> list[tuple[float, Switches]]:
-        """Contacts thrown in the period from `now` to `end`, in order; the first entry is how they stand at its beginning."""
-        changes = []
-        contacts = self._contacts()
-        if contacts != self.circuit.contacts:
-            changes.append((0.0, contacts))
-        due = self.relays.due
-        while due and due[0].at_us < end:
-            event = due.pop(0)
-            if self.relays.move(event):
-                changes.append((max(event.at_us - now, 0) * 1e-6, self._contacts()))
-        self.find_next()
-        return changes
 
     def supply_switched(self, on: bool) -> None:
         """The supply has just been enabled or lost its enable."""
@@ -187,7 +85,7 @@ class BenchModel:
             self._toggle_flaw(now)
         if self._tick_us > now:
             return False
-        self._tick_us = now + _TICK_US
+        self._tick_us = now + TICK_US
         self._slow_changes(now)
         return True
 
@@ -198,7 +96,7 @@ class BenchModel:
         self._warm()
         late = self.part.spec.late_leak
         if late and abs(self.circuit.states()[2].plate_V) > late.above_V:
-            self.part.stressed_s += _TICK_US * 1e-6
+            self.part.stressed_s += TICK_US * 1e-6
 
     def _plan_flaw(self, now: int) -> None:
         flaw = self.part.spec.intermittent
@@ -240,7 +138,7 @@ class BenchModel:
         """Lift the part out, a shorting wire round its leads."""
         for fault in self.fault_clock.drop(PART_KINDS):
             ACTS[fault.kind](self, fault, False)  # type: ignore[arg-type]
-        self._put(Fitted(_EMPTY))
+        self._put(Fitted(EMPTY))
 
     def fit_next(self) -> None:
         """Fit the next part of the scenario; the last one stays the last."""
@@ -249,11 +147,11 @@ class BenchModel:
     def fit(self, index: int) -> None:
         """Fit part `index` of the scenario."""
         if not self.scenario.parts:
-            self._put(Fitted(_EMPTY))
+            self._put(Fitted(EMPTY))
             return
         spec = self.scenario.parts[index]
         first = index if spec.same_as is None else spec.same_as
-        part = self._fitted.get(first) or Fitted(spec)
+        part = self._fitted.get(first) or Fitted(spec, first)
         self._fitted[index] = self._fitted[first] = part
         if part.out_since_us is not None:
             part.lie_shorted((self.now_us - part.out_since_us) * 1e-6)
@@ -330,7 +228,39 @@ class BenchModel:
 
     def model_state(self) -> dict[str, Any]:
         """Everything that changes, JSON-able."""
-        return {}
+        return {
+            "plain": {name: deepcopy(getattr(self, name)) for name in _PLAIN},
+            "fitted": [[index, part.state()] for index, part in sorted(self._fitted.items()) if part.first == index],
+            "indices": {str(index): part.first for index, part in self._fitted.items()},
+            "chance": self.chance.state,
+            "harms": [asdict(harm) for harm in self.harms],
+            "circuit": self.circuit.state(),
+            "relays": self.relays.state(),
+            "supply": self.supply.state(),
+            "lid": self.lid.state(),
+            "operator": self.operator.state(),
+            "faults": self.fault_clock.state(),
+        }
 
     def load_model(self, kept: dict[str, Any]) -> None:
         """Take up what `model_state` gave."""
+        for name, value in kept["plain"].items():
+            setattr(self, name, deepcopy(value))
+        made = {index: self._made(index, state) for index, state in kept["fitted"]}
+        self._fitted = {int(index): made[first] for index, first in kept["indices"].items()}
+        self.part = self._fitted[self.part_index] if self.part_index >= 0 else Fitted(EMPTY)
+        self.chance.state = kept["chance"]
+        self.harms = [Harm(**harm) for harm in kept["harms"]]
+        self.circuit.load(kept["circuit"], self.part.values(self._box_values), self.part.branch)
+        self.relays.load(kept["relays"])
+        self.supply.load(kept["supply"])
+        self.lid.load(kept["lid"])
+        self.operator.load(kept["operator"])
+        self.fault_clock.load(kept["faults"])
+        self.rewire()
+        self.find_next()
+
+    def _made(self, index: int, state: dict[str, Any]) -> Fitted:
+        part = Fitted(self.scenario.parts[index], index)
+        part.load(state)
+        return part

@@ -5,7 +5,8 @@ Opening can only be stopped by the bolt; the world's operator looks at it, a `li
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import asdict, dataclass, field
+from typing import Any
 
 from dwellbench.emulator.dice import Dice
 from dwellbench.emulator.faults import NEVER_US
@@ -95,13 +96,14 @@ class Lid:
     def _next(self) -> None:
         self.next_us = min(self._a.at_us, self._b.at_us, self._bolt.at_us)
 
-    def state(self) -> dict[str, object]:
+    def state(self) -> dict[str, Any]:
         """JSON-able."""
         rows = [[later.value, later.goal, later.at_us] for later in (self._a, self._b, self._bolt)]
-        return {"open": self.is_open, "powered": self._powered, "later": rows}
+        return {"open": self.is_open, "powered": self._powered, "later": rows, "fault": asdict(self.fault)}
 
-    def load(self, kept: dict[str, object]) -> None:
+    def load(self, kept: dict[str, Any]) -> None:
         """Take up what `state` gave."""
-        self.is_open, self._powered = bool(kept["open"]), bool(kept["powered"])
-        self._a, self._b, self._bolt = (_Later(*row) for row in kept["later"])  # type: ignore[attr-defined]
+        self.is_open, self._powered = kept["open"], kept["powered"]
+        self._a, self._b, self._bolt = (_Later(*row) for row in kept["later"])
+        self.fault = LidFault(**kept["fault"])
         self._next()

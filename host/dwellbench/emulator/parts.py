@@ -6,10 +6,10 @@ from dataclasses import dataclass, replace
 from math import exp
 from typing import Any
 
-from dwellbench.emulator.circuit import Branch, Plates
+from dwellbench.emulator.circuit_state import Branch, Plates
 from dwellbench.emulator.forming import Oxide
 from dwellbench.emulator.network import Values
-from dwellbench.emulator.scenario import PartSpec, Superlinear
+from dwellbench.emulator.part_spec import PartSpec, Superlinear
 
 _NOTHING_F = 1e-12  # plate capacitance of what has no plates in circuit; without effect there
 
@@ -66,8 +66,8 @@ class Link:
 class Fitted:
     """One physical part; it outlives its fittings."""
 
-    def __init__(self, spec: PartSpec) -> None:
-        self.spec = spec
+    def __init__(self, spec: PartSpec, first: int = -1) -> None:
+        self.spec, self.first = spec, first  # `first`: index of its first fitting
         self.farad = spec.capacitance_F or (_NOTHING_F if spec.open_lead else 0.0)
         self.ladder = spec.absorption if self.farad else ()  # (seconds, share)
         self.plates = Plates(spec.initial_V, [spec.initial_V] * len(self.ladder))

@@ -7,6 +7,7 @@ one to three times. From the coil's change to the last touch never takes more th
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 from dwellbench.emulator.dice import Dice
 from dwellbench.emulator.front_end import Errors
@@ -81,13 +82,21 @@ class Relays:
         if not any(event.which == which for event in self.due):
             self.position[which] = WORK if self.coil[which] else REST
 
-    def state(self) -> dict[str, object]:
+    def state(self) -> dict[str, Any]:
         """JSON-able."""
         due = [[event.at_us, event.which, event.position] for event in self.due]
-        return {"coil": list(self.coil), "position": list(self.position), "due": due, "dice": self._dice.state}
+        return {
+            "coil": list(self.coil),
+            "position": list(self.position),
+            "due": due,
+            "dice": self._dice.state,
+            "welded": sorted(self.welded.items()),
+            "stuck": sorted(self.stuck),
+        }
 
-    def load(self, kept: dict[str, object]) -> None:
+    def load(self, kept: dict[str, Any]) -> None:
         """Take up what `state` gave."""
-        self.coil, self.position = list(kept["coil"]), list(kept["position"])  # type: ignore[call-overload]
-        self.due = [Event(*row) for row in kept["due"]]  # type: ignore[attr-defined]
-        self._dice.state = int(kept["dice"])  # type: ignore[call-overload]
+        self.coil, self.position = list(kept["coil"]), list(kept["position"])
+        self.due = [Event(*row) for row in kept["due"]]
+        self._dice.state = kept["dice"]
+        self.welded, self.stuck = dict(kept["welded"]), set(kept["stuck"])

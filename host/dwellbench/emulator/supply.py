@@ -6,7 +6,8 @@ given, and a staircase of settings is a ramp. On, it holds its voltage either wa
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import asdict, dataclass
+from typing import Any
 
 from dwellbench.emulator.dice import Dice
 from dwellbench.emulator.front_end import Errors
@@ -79,7 +80,7 @@ class Supply:
         self._drift = max(-limit, min(limit, wanted))
         self.moving = True
 
-    def state(self) -> dict[str, float]:
+    def state(self) -> dict[str, Any]:
         """JSON-able."""
         return {
             "on": self.on,
@@ -89,11 +90,13 @@ class Supply:
             "drifted": self._drifted,
             "since_us": self._since_us,
             "dice": self._dice.state,
+            "fault": asdict(self.fault),
         }
 
-    def load(self, kept: dict[str, float]) -> None:
+    def load(self, kept: dict[str, Any]) -> None:
         """Take up what `state` gave."""
-        self.on, self.moving = bool(kept["on"]), bool(kept["moving"])
-        self.setting_mv, self._since_us = int(kept["setting_mv"]), int(kept["since_us"])
+        self.on, self.moving = kept["on"], kept["moving"]
+        self.setting_mv, self._since_us = kept["setting_mv"], kept["since_us"]
         self._drift, self._drifted = kept["drift"], kept["drifted"]
-        self._dice.state = int(kept["dice"])
+        self._dice.state = kept["dice"]
+        self.fault = SupplyFault(**kept["fault"])

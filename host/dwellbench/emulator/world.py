@@ -169,7 +169,9 @@ class World(BenchModel):
         self._switch_supply()
         self._wire()
         self._sense()
-        return self.contact_changes(now, end)
+        changes = self.contact_changes(now, end)
+        self.find_next()
+        return changes
 
     def _housekeep(self) -> None:
         """Now and then: go on at another place of the noise table, in another stride."""
