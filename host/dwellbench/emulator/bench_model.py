@@ -232,7 +232,7 @@ class BenchModel(Hardware):
             "plain": {name: deepcopy(getattr(self, name)) for name in _PLAIN},
             "fitted": [[index, part.state()] for index, part in sorted(self._fitted.items()) if part.first == index],
             "indices": {str(index): part.first for index, part in self._fitted.items()},
-            "chance": self.chance.state,
+            "chance": [self.chance.state, self.chips.at, self.chips.stride],
             "harms": [asdict(harm) for harm in self.harms],
             "circuit": self.circuit.state(),
             "relays": self.relays.state(),
@@ -249,7 +249,7 @@ class BenchModel(Hardware):
         made = {index: self._made(index, state) for index, state in kept["fitted"]}
         self._fitted = {int(index): made[first] for index, first in kept["indices"].items()}
         self.part = self._fitted[self.part_index] if self.part_index >= 0 else Fitted(EMPTY)
-        self.chance.state = kept["chance"]
+        self.chance.state, self.chips.at, self.chips.stride = kept["chance"]
         self.harms = [Harm(**harm) for harm in kept["harms"]]
         self.circuit.load(kept["circuit"], self.part.values(self._box_values), self.part.branch)
         self.relays.load(kept["relays"])
@@ -258,6 +258,7 @@ class BenchModel(Hardware):
         self.operator.load(kept["operator"])
         self.fault_clock.load(kept["faults"])
         self.rewire()
+        self.chips_changed()
         self.find_next()
 
     def _made(self, index: int, state: dict[str, Any]) -> Fitted:

@@ -9,11 +9,13 @@ from __future__ import annotations
 from math import exp
 from typing import Any, NamedTuple
 
-from dwellbench.emulator.dice import Dice
+from dwellbench.emulator.dice import TABLE_SIZE, Dice, noise_table
 from dwellbench.emulator.front_end import Errors
 from dwellbench.emulator.reference import box, channels
 
 _FULL = 32768.0
+_MASK = TABLE_SIZE - 1
+_PART, _SUPPLY, _SHUNT = (channels()[name] for name in ("part", "supply", "shunt"))
 _KELVIN = 273.15
 
 
@@ -62,6 +64,43 @@ def static_volts(e: Errors, celsius: float) -> dict[str, float]:
         "reference_a": reference * (1.0 + e.reference_error[0]),
         "reference_b": reference * (1.0 + e.reference_error[1]),
     }
+
+
+class Chips:
+    """Both converters: `first` and `second` give the code of one conversion.
+
+    Noise walks a fixed table from a place and in a stride that are drawn anew ten times a second: cheap, and the same everywhere.
+    """
+
+    def __init__(self, e: Errors, celsius: float, chance: Dice) -> None:
+        self.lines = lines(e)
+        self.static_V = {channels()[name]: volts for name, volts in static_volts(e, celsius).items()}
+        self._chance, self._table = chance, noise_table()
+        self.at = self.stride = 1
+        self.stir()
+
+    def stir(self) -> None:
+        """Go on at another place of the noise table, in another stride."""
+        self.at = self._chance.bits() & _MASK
+        self.stride = self._chance.bits() & _MASK | 1
+
+    def first(self, conversion: int, high_V: float, supply_V: float) -> int:
+        """Code of converter 0 for channel * 2 + range. KeyError for a channel it does not have."""
+        scale, offset, noise = self.lines[0][conversion]
+        channel = conversion >> 1
+        volts = high_V if channel == _PART else supply_V if channel == _SUPPLY else self.static_V[channel]
+        self.at = at = (self.at + self.stride) & _MASK
+        code = volts * scale + offset + noise * self._table[at]
+        return -32768 if code < -32768.0 else 32767 if code > 32767.0 else int(code + 32768.5) - 32768
+
+    def second(self, conversion: int, low_V: float) -> int:
+        """Code of converter 1, likewise."""
+        scale, offset, noise = self.lines[1][conversion]
+        channel = conversion >> 1
+        volts = low_V if channel == _SHUNT else self.static_V[channel]
+        self.at = at = (self.at + self.stride) & _MASK
+        code = volts * scale + offset + noise * self._table[at]
+        return -32768 if code < -32768.0 else 32767 if code > 32767.0 else int(code + 32768.5) - 32768
 
 
 _U_REL = 1e-3

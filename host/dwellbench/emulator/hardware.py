@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dwellbench.emulator import front_end
 from dwellbench.emulator.circuit import Circuit
-from dwellbench.emulator.converters import Line, lines, static_volts
+from dwellbench.emulator.converters import Chips, Line, lines, static_volts
 from dwellbench.emulator.dice import Dice
 from dwellbench.emulator.lid import Lid
 from dwellbench.emulator.network import CHARGE_MADE, CHARGE_NONE, CHARGE_REST, Switches
@@ -39,6 +39,7 @@ class Hardware:
         self.relays = Relays(e, Dice(seed, "relays"))
         self.supply = Supply(e, Dice(seed, "supply"))
         self.lid = Lid(e.bolt_ms, Dice(seed, "lid"))
+        self.chips = Chips(e, self.scenario.ambient_C, self.chance)
         omega = 6.283185307179586 * e.mains_Hz
         self.circuit = Circuit(self._box_values, omega, front_end.windows_s(e), complex(e.mains_A), complex(e.ripple_V))
 
@@ -54,6 +55,7 @@ class Hardware:
         self.stuck_code: list[int | None] = [None, None]
         self.stop_pressed = self.controller_hung = self.link_silent = False
         self.powered = True
+        self.chips_ill = False
         self.clock_offset_ms = 0
         self.celsius = self._warm_goal = self.scenario.ambient_C
         self._warm_K_per_s = 0.0
@@ -62,24 +64,23 @@ class Hardware:
     # -- converters
 
     def rewire(self) -> None:
-        """Make the converters' lines anew (a fault changed them)."""
-        number = channels()
-        self.lines = lines(self.errors)
+        """Make the converters' lines and steady inputs anew (a fault or the warmth changed them)."""
+        number, chips = channels(), self.chips
+        chips.lines = lines(self.errors)
         for name, factor in self.divider_factor.items():
             for k in (0, 1):
-                row = self.lines[0][number[name] * 2 + k]
-                self.lines[0][number[name] * 2 + k] = Line(row.scale * factor, row.offset, row.noise)
+                row = chips.lines[0][number[name] * 2 + k]
+                chips.lines[0][number[name] * 2 + k] = Line(row.scale * factor, row.offset, row.noise)
         volts = static_volts(self.errors, self.celsius)
         if self.thermistor_fixed_V is not None:
             volts["thermistor"] = self.thermistor_fixed_V
         volts["reference_a"] *= self.reference_factor[0]
         volts["reference_b"] *= self.reference_factor[1]
-        self.static_V = {number[name]: value for name, value in volts.items()}
+        chips.static_V = {number[name]: value for name, value in volts.items()}
 
-    @property
-    def chips_ill(self) -> bool:
-        """A converter is not as it should be."""
-        return not self.powered or True in self.silent or self.stuck_code != [None, None]
+    def chips_changed(self) -> None:
+        """A converter fell ill or is well again."""
+        self.chips_ill = not self.powered or True in self.silent or self.stuck_code != [None, None]
 
     def warm_to(self, celsius: float, over_s: float) -> None:
         """Let the part's surroundings go to `celsius`, evenly, in `over_s`."""

@@ -83,8 +83,8 @@ class Lid:
     def power(self, released: bool, now_us: int) -> None:
         """Power on the release (already gated by the detector). Without it the spring closes the bolt, if the lid is shut."""
         self._powered = released
-        if not self.fault.bolt_stays:
-            self._bolt.send(not released and not self.is_open, now_us + self._bolt_us)
+        if not self.fault.bolt_stays and (released or not self.is_open):
+            self._bolt.send(not released, now_us + self._bolt_us)
         self._next()
 
     def tick(self, now_us: int) -> None:

@@ -101,10 +101,12 @@ def _detector(w: World, f: Fault, on: bool) -> None:
 
 def _silent(w: World, f: Fault, on: bool) -> None:
     w.silent[f.more["unit"]] = on
+    w.chips_changed()
 
 
 def _code(w: World, f: Fault, on: bool) -> None:
     w.stuck_code[f.more["unit"]] = f.more["code"] if on else None
+    w.chips_changed()
 
 
 def _reference(w: World, f: Fault, on: bool) -> None:

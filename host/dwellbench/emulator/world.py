@@ -11,8 +11,7 @@ from typing import Any
 
 from dwellbench.emulator.bench_model import PERIOD_US, BenchModel
 from dwellbench.emulator.converters import calibration
-from dwellbench.emulator.dice import TABLE_SIZE, noise_table
-from dwellbench.emulator.reference import bits, box, channels
+from dwellbench.emulator.reference import bits, box
 from dwellbench.emulator.relays import BLEED, CHARGE, LOW, MID
 from dwellbench.emulator.scenario import Scenario
 
@@ -21,8 +20,6 @@ NO_CODE = 40000
 NO_CONVERSION = -1
 CAUSE_POWER, CAUSE_RESET = 0, 1
 _WRAP = 1 << 30
-_TABLE_MASK = TABLE_SIZE - 1
-_PART, _SUPPLY, _SHUNT = channels()["part"], channels()["supply"], channels()["shunt"]
 _IN, _OUT = bits("inputs"), bits("outputs")
 _COILS = ((BLEED, _OUT["bleed_open"]), (CHARGE, _OUT["charge"]), (MID, _OUT["mid_shunt"]), (LOW, _OUT["low_open"]))
 _RELEASE = _OUT["release"]
@@ -47,8 +44,6 @@ class World(BenchModel):
         super().__init__(scenario, scenario.seed if seed is None else seed)
         self.codes = [NO_CODE, NO_CODE]
         self.inputs = 0
-        self._table = noise_table()
-        self._noise_at = self._noise_step = 1
         self._outputs = 0
         self._pumped_us = self._fed_us = -1
         self._hv = False
@@ -59,7 +54,6 @@ class World(BenchModel):
         self.clock_offset_ms = (_WRAP - wrap[0]) if wrap else scenario.clock_ms
         self._pump_hold_us = round(box().pump_hold_s * 1e6)
         self._watchdog_us = round(box().watchdog_s * 1e6)
-        self._housekeep()
         self._sense()
 
     # -- what a board calls
@@ -132,6 +126,7 @@ class World(BenchModel):
     def set_power(self, on: bool) -> None:
         """The whole box loses its power, or has it again."""
         self.powered = on
+        self.chips_changed()
         self.controller_hung = not on
         if on:
             self._reset = CAUSE_POWER
@@ -165,18 +160,13 @@ class World(BenchModel):
     def _due(self, now: int, end: int) -> list[Any]:
         """What happens in this period: mechanics at its beginning, contacts at their own microseconds."""
         if self.tick(now):
-            self._housekeep()
+            self.chips.stir()
         self._switch_supply()
         self._wire()
         self._sense()
         changes = self.contact_changes(now, end)
         self.find_next()
         return changes
-
-    def _housekeep(self) -> None:
-        """Now and then: go on at another place of the noise table, in another stride."""
-        self._noise_at = self.chance.bits() & _TABLE_MASK
-        self._noise_step = self.chance.bits() & _TABLE_MASK | 1
 
     def _sense(self) -> None:
         hv = self._hv if self.detector_stuck is None else bool(self.detector_stuck)
@@ -194,28 +184,9 @@ class World(BenchModel):
         self.inputs = level
 
     def _convert(self, conv0: int, conv1: int) -> None:
-        codes, circuit = self.codes, self.circuit
-        codes[0] = codes[1] = NO_CODE
-        if conv0 >= 0:
-            scale, offset, noise = self.lines[0][conv0]
-            channel = conv0 >> 1
-            volts = (
-                circuit.high_mean
-                if channel == _PART
-                else circuit.supply_mean
-                if channel == _SUPPLY
-                else self.static_V[channel]
-            )
-            self._noise_at = at = (self._noise_at + self._noise_step) & _TABLE_MASK
-            code = volts * scale + offset + noise * self._table[at]
-            codes[0] = -32768 if code < -32768.0 else 32767 if code > 32767.0 else int(code + 32768.5) - 32768
-        if conv1 >= 0:
-            scale, offset, noise = self.lines[1][conv1]
-            channel = conv1 >> 1
-            volts = circuit.low_mean if channel == _SHUNT else self.static_V[channel]
-            self._noise_at = at = (self._noise_at + self._noise_step) & _TABLE_MASK
-            code = volts * scale + offset + noise * self._table[at]
-            codes[1] = -32768 if code < -32768.0 else 32767 if code > 32767.0 else int(code + 32768.5) - 32768
+        codes, circuit, chips = self.codes, self.circuit, self.chips
+        codes[0] = chips.first(conv0, circuit.high_mean, circuit.supply_mean) if conv0 >= 0 else NO_CODE
+        codes[1] = chips.second(conv1, circuit.low_mean) if conv1 >= 0 else NO_CODE
         if self.chips_ill:
             self._ill_codes()
 
@@ -231,7 +202,7 @@ class World(BenchModel):
 
     def snapshot(self) -> dict[str, Any]:
         """Everything that changes, JSON-able; `restore` on a World of the same scenario and seed goes on with the same codes."""
-        own = [self._noise_at, self._noise_step, self._outputs, self._pumped_us, self._fed_us, self._hv, self._reset]
+        own = [self._outputs, self._pumped_us, self._fed_us, self._hv, self._reset]
         return {"seed": self.seed, "own": own, "codes": list(self.codes), "inputs": self.inputs, **self.model_state()}
 
     def restore(self, kept: dict[str, Any]) -> None:
@@ -240,12 +211,4 @@ class World(BenchModel):
             raise ValueError("the snapshot is of another seed")
         self.load_model(kept)
         self.codes, self.inputs = list(kept["codes"]), kept["inputs"]
-        (
-            self._noise_at,
-            self._noise_step,
-            self._outputs,
-            self._pumped_us,
-            self._fed_us,
-            self._hv,
-            self._reset,
-        ) = kept["own"]
+        self._outputs, self._pumped_us, self._fed_us, self._hv, self._reset = kept["own"]

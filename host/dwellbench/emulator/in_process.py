@@ -1,0 +1,98 @@
+"""The firmware in this very process, in virtual time and without threads: `Controller.step()` over a simulated board."""
+
+from __future__ import annotations
+
+import json
+from typing import Any
+
+from dwellbench import assets
+from dwellbench.emulator.emulated_box import EmulatedBox
+from dwellbench.emulator.world import NO_CONVERSION
+
+assets.use_firmware()
+
+from dwellbox.board import Board  # noqa: E402
+from dwellbox.controller import Controller  # noqa: E402
+
+
+class SimulatedBoard(Board):  # type: ignore[misc]
+    """The seam's methods over an emulated box. Names and meanings are the firmware's."""
+
+    def __init__(self, box: EmulatedBox) -> None:
+        self._box = box
+        self._world = box.world
+        self.pumps = 0
+        self.feeds = 0
+        self.conversions = [NO_CONVERSION, NO_CONVERSION]
+        self.emulation: dict[str, Any] = box.emulation()
+        # straight to where the bytes are: these are the calls of every period
+        self.get = box.link.get
+        self.room = box.link.room
+        self.put = box.link.put
+        self.now_ms = box.world.clock_ms
+
+    def wait_period(self) -> None:
+        box = self._box
+        zero, one = self.conversions
+        self._world.period(box.outputs, box.supply_mv, self.pumps, self.feeds, zero, one)
+        self.pumps = self.feeds = 0
+        self.conversions[0] = self.conversions[1] = NO_CONVERSION
+
+    def inputs(self) -> int:
+        return self._world.inputs
+
+    def convert(self, unit: int, channel: int, full_scale: int) -> None:
+        self.conversions[unit] = channel * 2 + full_scale
+
+    def code(self, unit: int) -> int:
+        return self._world.codes[unit]
+
+    def outputs(self, bits: int) -> None:
+        self._box.outputs = bits
+
+    def supply_mv(self, mv: int) -> None:
+        self._box.supply_mv = mv
+
+    def pump(self) -> None:
+        self.pumps += 1
+
+    def feed(self) -> None:
+        self.feeds += 1
+
+    def keep(self, name: str, data: bytes) -> None:
+        self._box.keep(name, data)
+
+    def kept(self, name: str) -> bytes | None:
+        return self._box.flash.get(name)
+
+    def scratch(self) -> int:
+        return self._box.scratch
+
+    def set_scratch(self, value: int) -> None:
+        self._box.scratch = value
+
+    def cause(self) -> int:
+        return self._box.cause
+
+    def unique_id(self) -> str:
+        return self._world.unique_id
+
+    def restart_plain(self) -> None:
+        self._box.to_plain()
+
+
+class InProcessBox(EmulatedBox):
+    """The firmware's own files in CPython."""
+
+    def start(self) -> None:
+        """Build the controller anew, as after a reset: RAM is gone."""
+        reference = json.loads((assets.device() / "reference_box.json").read_text(encoding="utf-8"))
+        self.board = SimulatedBoard(self)
+        self.controller = Controller(self.board, reference, assets.build_hash())
+        self._step = self.controller.step
+        self._wait = self.board.wait_period
+
+    def step(self) -> None:
+        """One turn of main.py's loop."""
+        self._step()
+        self._wait()
