@@ -17,6 +17,7 @@ LOG = const(4)
 # kind, stage, shunt | range << 2 | vrange << 3, flags, t, sv, si, vmin, vmax, imin, imax, vs, temp, nv, ni, iclip
 _FORM = "<BBBBIiihhhhhhBBB"
 _SIZE = struct.calcsize(_FORM)
+_CHUNK = const(64)  # rows a piece: the heap need not have 40 kB in one place
 _NOTES = const(120)  # events that are not samples: a run makes about a dozen
 
 
@@ -24,29 +25,35 @@ class Ring:
     """`n` is the number the next event gets; `first` the oldest still kept."""
 
     def __init__(self, capacity):
-        """Make room for `capacity` events. Nothing below `note` allocates afterwards."""
-        self.capacity = capacity
+        """Make room for at least `capacity` events. Keeping a sample allocates nothing afterwards."""
+        pieces = (capacity + _CHUNK - 1) // _CHUNK
+        self.capacity = pieces * _CHUNK
         self.n = 0
         self.first = 0
-        self._rows = bytearray(capacity * _SIZE)
+        self._pieces = [bytearray(_CHUNK * _SIZE) for _ in range(pieces)]
         self._notes = {}
 
     def _turn(self):
-        """Return the place of the next event and count it."""
-        at = self.n % self.capacity * _SIZE
-        self.n += 1
-        if self.n - self.first > self.capacity:
-            self.first = self.n - self.capacity
-        return at
+        """Count the next event and return its number."""
+        n = self.n
+        self.n = n + 1
+        if n + 1 - self.first > self.capacity:
+            self.first = n + 1 - self.capacity
+        return n
+
+    def _piece(self, n):
+        return self._pieces[n % self.capacity // _CHUNK]
 
     def sample(
         self, t, stage, shunt, range_, nv, sv, vmin, vmax, ni, si, imin, imax, iclip, vs, temp, flags, vrange
     ):
         """Keep one window. Allocates nothing."""
-        at = self._turn()
+        n = self._turn()
+        rows = self._pieces[n % self.capacity // _CHUNK]
+        at = n % _CHUNK * _SIZE
         packed = shunt | range_ << 2 | vrange << 3
         struct.pack_into(
-            _FORM, self._rows, at, SAMPLE, stage, packed, flags, t, sv, si, vmin, vmax, imin, imax, vs, temp, nv, ni, iclip
+            _FORM, rows, at, SAMPLE, stage, packed, flags, t, sv, si, vmin, vmax, imin, imax, vs, temp, nv, ni, iclip
         )
 
     def state(self, t, state, stage, why):
@@ -66,9 +73,8 @@ class Ring:
         self._note(LOG, t, (text,))
 
     def _note(self, kind, t, words):
-        n = self.n
-        at = self._turn()
-        self._rows[at] = kind
+        n = self._turn()
+        self._piece(n)[n % _CHUNK * _SIZE] = kind
         notes = self._notes
         if len(notes) >= _NOTES:
             del notes[min(notes)]
@@ -76,7 +82,7 @@ class Ring:
 
     def kind(self, n):
         """Return the kind of a kept event."""
-        return self._rows[n % self.capacity * _SIZE]
+        return self._piece(n)[n % _CHUNK * _SIZE]
 
     def note(self, n):
         """Return (t, words) of an event that is not a sample, or None when its words are gone."""
@@ -84,8 +90,8 @@ class Ring:
 
     def row(self, n, into):
         """Unpack a sample's numbers after its `n` into the list `into` (17 places). Allocates nothing that stays."""
-        rows = self._rows
-        at = n % self.capacity * _SIZE
+        rows = self._piece(n)
+        at = n % _CHUNK * _SIZE
         packed = rows[at + 2]
         into[0] = _word(rows, at + 4) | _word(rows, at + 6) << 16
         into[1] = rows[at + 1]

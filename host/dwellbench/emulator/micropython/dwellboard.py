@@ -9,9 +9,9 @@ import struct
 from dwellbox.board import Board
 
 _OUT_ROOM = 64
-_ASK = "<cBiBBbbB"  # kind, outputs, supply_mv, pumps, feeds, conversion 0, conversion 1, bytes out
+_ASK = "<BBiBBbbB"  # kind, outputs, supply_mv, pumps, feeds, conversion 0, conversion 1, bytes out
 _ASK_SIZE = struct.calcsize(_ASK)
-_REPLY_SIZE = 12  # now_ms u32, inputs u8, code 0 u16 + 32768, code 1, room u8, bytes in u8, spare
+_REPLY_SIZE = 12  # now_ms u32, inputs u8, codes 2 x i16, room u8, bytes in u8, which codes are none u8
 
 
 class PipeBoard(Board):
@@ -74,8 +74,9 @@ class PipeBoard(Board):
             raise SystemExit  # the world has ended
         self._now = reply[0] | reply[1] << 8 | reply[2] << 16 | reply[3] << 24
         self._inputs = reply[4]
-        self._codes[0] = (reply[5] | reply[6] << 8) - 25536
-        self._codes[1] = (reply[7] | reply[8] << 8) - 25536
+        none = reply[11]
+        self._codes[0] = 40000 if none & 1 else _short(reply, 5)
+        self._codes[1] = 40000 if none & 2 else _short(reply, 7)
         self._room = reply[9]
         self._got = reply[10]
         self._at = 0
@@ -152,12 +153,17 @@ class PipeBoard(Board):
 
     def _word(self, kind, name, data):
         """Exchange something rare; allocates."""
-        self._to.write(struct.pack("<cBH", kind, len(name), len(data)) + name.encode() + data)
+        self._to.write(kind + struct.pack("<BH", len(name), len(data)) + name.encode() + data)
         size = self._in.read(2)
         if len(size) != 2:
             raise SystemExit
         length = size[0] | size[1] << 8
         return self._in.read(length) if length else b""
+
+
+def _short(buffer, at):
+    value = buffer[at] | buffer[at + 1] << 8
+    return value - 65536 if value & 0x8000 else value
 
 
 def make_board():
