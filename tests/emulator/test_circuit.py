@@ -13,7 +13,7 @@ from dwellbench.emulator.circuit import Circuit
 from dwellbench.emulator.circuit_state import PERIOD_S, Plates
 from dwellbench.emulator.network import CHARGE_MADE, CHARGE_NONE, CHARGE_REST, Switches, Values
 from dwellbench.emulator.parts import PowerLaw
-from dwellbench.emulator.scenario import Superlinear
+from dwellbench.emulator.part_spec import Superlinear
 
 STRAY, FIXTURE, LOW, CLAMP_OHM = 10e-12, 2e-12, 100e-12, 10.0
 OMEGA = 2 * pi * 50.0

@@ -19,6 +19,7 @@ _CLAMP_WATCH_V = 4.0  # a mean beyond this sends the period through the careful 
 _PROBES_S = (1e-6, 1e-5, 1e-4, 1e-3)  # after a switching the low node may strike the clamp and be back within the segment
 _CROSSING_S = 1e-10
 _LEAST_SEGMENT_S = 1e-6
+_LEAST_BEND_S = 1e-8
 
 
 class Circuit(CircuitState):
@@ -29,39 +30,44 @@ class Circuit(CircuitState):
 
     def period(self, changes: Sequence[tuple[float, Switches]] = ()) -> None:
         """Advance 5 ms; `changes` are contacts thrown on the way: seconds into the period, in order."""
-        if changes or self._clamp:
+        branch = self.branch
+        j = 0.0
+        if changes or self._clamp or (branch is not None and not self._foresee()):
             self._careful(changes)
             return
-        j = self._held() if self.branch is not None else 0.0
+        if branch is not None:
+            j = branch.current(self._volts_then) - self._tangent * self._volts_then
         y, high, low = self._step(self.y, self.s, self.r, self.rc, self.rs, self.mc, self.ms, j)
         if not -_CLAMP_WATCH_V < low < _CLAMP_WATCH_V:
             self._careful(changes)
             return
         self.y, self.high_mean, self.low_mean = y, high, low
-        if self.branch is not None:
-            self.branch.grow(self._volts_then, PERIOD_S)
+        if branch is not None:
+            branch.grow(self._volts_then, PERIOD_S)
         self._advance_drive()
 
-    def _held(self) -> float:
-        """Nonlinear conduction beyond its tangent, at its value half a period ahead."""
+    def _foresee(self) -> bool:
+        """Foresee the plate voltage half a period on; False if the tangent does not serve for the way there."""
         branch = self.branch
         assert branch is not None
         now, then = self._look(self.y, self.s, self.r)
-        g = self._tangent
-        then += self._half_kick * (branch.current(now) - g * now)
-        if self._retangent(branch.slope(then)):
-            return self._held()
+        if not self._fits(branch.slope(now), PERIOD_S):
+            self._retangent(branch.slope(now))
+            now, then = self._look(self.y, self.s, self.r)
+        then += self._half_kick * (branch.current(now) - self._tangent * now)
         self._volts_then = then
-        return branch.current(then) - g * then
+        return self._fits(branch.slope(then), PERIOD_S)
 
-    def _retangent(self, slope: float) -> bool:
-        """Take another tangent into the network if the present one is a poor fit; True if so."""
-        stiff, g = slope * PERIOD_S / self.values.capacitance_F, self._tangent
-        if (stiff < 0.1) if not g else (stiff > 0.02 and 0.5 * g < slope < 2.0 * g):
-            return False
-        self._tangent = 2.0 ** round(log2(slope)) if stiff > 0.02 else 0.0
+    def _fits(self, slope: float, length: float) -> bool:
+        """Is what the tangent leaves of the branch small in a step of this length, or the tangent near enough?"""
+        g = self._tangent
+        return 0.5 * g < slope < 2.0 * g or abs(slope - g) * length < 0.1 * self.values.capacitance_F
+
+    def _retangent(self, slope: float) -> None:
+        """Take another tangent into the network."""
+        soft = slope * PERIOD_S < 0.02 * self.values.capacitance_F
+        self._tangent = 0.0 if soft else 2.0 ** round(log2(slope))
         self._rebuild()
-        return True
 
     def _advance_drive(self) -> None:
         a, b, c, d = self._turns
@@ -80,8 +86,6 @@ class Circuit(CircuitState):
     # -- the careful path: switchings, clamp
 
     def _careful(self, changes: Sequence[tuple[float, Switches]]) -> None:
-        if self.branch is not None:
-            self._retangent(self.branch.slope(self.modal.plate.now(self.y, self.drive)))
         sums = [0.0, 0.0, 0.0]
         at = 0.0
         for when, contacts in changes:
@@ -131,21 +135,41 @@ class Circuit(CircuitState):
         return late
 
     def _segment(self, at: float, length: float, sums: list[float]) -> None:
-        modal, y, drive = self.modal, self.y, self.drive
-        j = self._held_current(length)
+        """Step by `length`; in halves, and those in halves, where a nonlinear branch bends too much on the way."""
+        if self.branch is None:
+            self._linear(at, length, 0.0, sums)
+            return
+        then = self._foreseen(length)
+        if length > _LEAST_BEND_S and not self._fits(self.branch.slope(then), length):
+            self._segment(at, 0.5 * length, sums)
+            self._segment(at + 0.5 * length, 0.5 * length, sums)
+            return
+        self._linear(at, length, self.branch.current(then) - self._tangent * then, sums)
+        self.branch.grow(then, length)
+
+    def _foreseen(self, length: float) -> float:
+        """Plate voltage in the middle of the next `length` seconds."""
+        branch = self.branch
+        assert branch is not None
+        now = self.modal.plate.now(self.y, self.drive)
+        if not self._fits(branch.slope(now), length):
+            self._retangent(branch.slope(now))
+        modal = self.modal
+        half = modal.after(self.y, 0.5 * length, branch.current(now) - self._tangent * now)
+        return modal.plate.now(half, modal.turn(self.drive, 0.5 * length))
+
+    def _linear(self, at: float, length: float, j: float, sums: list[float]) -> None:
+        """One exact step with `j` amperes held through the part, `at` seconds into the period."""
+        modal, drive = self.modal, self.drive
         self._add(modal.high, at, length, j, 0, sums)
         self._add(modal.low, at, length, j, 1, sums)
         within = min(length, self.windows[0] - at)
         if within > 0.0:
             sums[2] += self._supply_integral(within, j)
-        self.y = modal.after(y, length, j)
+        self.y = modal.after(self.y, length, j)
         turned = modal.turn(drive, length)
-        self.rc, self.rs, self.mc, self.ms = (
-            turned.ripple.real,
-            turned.ripple.imag,
-            turned.mains.real,
-            turned.mains.imag,
-        )
+        self.rc, self.rs = turned.ripple.real, turned.ripple.imag
+        self.mc, self.ms = turned.mains.real, turned.mains.imag
         if self.contacts.supply_on:
             self.s = turned.s
         elif modal.supply is None:
@@ -164,14 +188,3 @@ class Circuit(CircuitState):
         if self.modal.supply is None:
             return self.s * within
         return self.modal.integral(self.modal.supply, self.y, self.drive, within, j)
-
-    def _held_current(self, length: float) -> float:
-        branch = self.branch
-        if branch is None:
-            return 0.0
-        modal, g = self.modal, self._tangent
-        now = modal.plate.now(self.y, self.drive)
-        half = modal.after(self.y, 0.5 * length, branch.current(now) - g * now)
-        then = modal.plate.now(half, modal.turn(self.drive, 0.5 * length))
-        branch.grow(then, length)
-        return branch.current(then) - g * then

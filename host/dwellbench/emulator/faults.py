@@ -115,7 +115,7 @@ def read_fault(source: str, where: str, raw: Any) -> Fault:
     fault = Fault(**{"run": _DEFAULT_RUN.get(kind, 1), **values}, more=more)
     if kind == "clock_wrap" and fault.run:
         raise UsageError(
-            f"{source}: {where}: the wrap is set at power-up", remedy="Take run out or write run = 0.", file=source
+            f"{source}: {where}: clock_wrap is set at power-up", remedy="Take run out or write run = 0.", file=source
         )
     return fault
 

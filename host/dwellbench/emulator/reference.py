@@ -5,10 +5,9 @@ from __future__ import annotations
 import json
 from dataclasses import dataclass
 from functools import lru_cache
-from pathlib import Path
 from typing import Any
 
-_HERE = Path(__file__).resolve().parent
+from dwellbench import assets
 
 
 # What the drawing of the box does not state but the physics cannot do without. Typical of the construction, no source.
@@ -60,13 +59,6 @@ class Box:
         return self.divider_ohm / self.divider_bottom_ohm
 
 
-def _asset(folder: str, name: str) -> str:
-    for found in (_HERE.parent / ("_" + folder) / name, _HERE.parents[2] / folder / name):  # wheel, then checkout
-        if found.is_file():
-            return found.read_text("utf-8")
-    raise FileNotFoundError(f"{folder}/{name}")
-
-
 def _read(raw: dict[str, Any]) -> Box:
     supply, paths, converter = raw["supply"], raw["paths"], raw["converter"]
     return Box(
@@ -101,18 +93,18 @@ def _read(raw: dict[str, Any]) -> Box:
 @lru_cache(maxsize=1)
 def box() -> Box:
     """The reference box."""
-    return _read(json.loads(_asset("device", "reference_box.json")))
+    return _read(json.loads((assets.device() / "reference_box.json").read_text("utf-8")))
 
 
 @lru_cache(maxsize=8)
 def bits(table: str) -> dict[str, int]:
     """Masks by name of `inputs` or `outputs` in codes.json."""
-    codes = json.loads(_asset("protocol", "codes.json"))
+    codes = json.loads((assets.protocol() / "codes.json").read_text("utf-8"))
     return {row["id"]: 1 << row["bit"] for row in codes[table]}
 
 
 @lru_cache(maxsize=1)
 def channels() -> dict[str, int]:
     """Converter channels by name."""
-    codes = json.loads(_asset("protocol", "codes.json"))
+    codes = json.loads((assets.protocol() / "codes.json").read_text("utf-8"))
     return {row["id"]: row["code"] for row in codes["channels"]}
