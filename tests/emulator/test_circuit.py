@@ -1,8 +1,9 @@
-"""The circuit's exact steps against a general solver of differential equations, on equations written down anew here."""
+"""The circuit's exact steps against a general solver of differential equations, on equations written down
+anew here."""
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from math import cos, pi
 
 import numpy as np
@@ -12,8 +13,8 @@ from scipy.integrate import solve_ivp
 from dwellbench.emulator.circuit import Circuit
 from dwellbench.emulator.circuit_state import PERIOD_S, Plates
 from dwellbench.emulator.network import CHARGE_MADE, CHARGE_NONE, CHARGE_REST, Switches, Values
-from dwellbench.emulator.parts import PowerLaw
 from dwellbench.emulator.part_spec import Superlinear
+from dwellbench.emulator.parts import PowerLaw
 
 STRAY, FIXTURE, LOW, CLAMP_OHM = 10e-12, 2e-12, 100e-12, 10.0
 OMEGA = 2 * pi * 50.0
@@ -29,7 +30,8 @@ def film(farad: float = 47e-9, ohm: float = 3e10) -> Values:
 
 @dataclass
 class Equations:
-    """Kirchhoff's laws at the plates p and l, the ladder's capacitors and the supply's output; h follows from them.
+    """Kirchhoff's laws at the plates p and l, the ladder's capacitors and the supply's output; h follows
+    from them.
 
     State x = [p, l, ladder..., s, integral of h, integral of l].
     """
@@ -42,20 +44,30 @@ class Equations:
         siemens, amps = 1 / v.esr_ohm + 1 / v.divider_ohm, p / v.esr_ohm
         if k.charge == CHARGE_MADE:
             siemens, amps = siemens + 1 / v.charge_ohm, amps + s / v.charge_ohm
-        siemens += (1 / v.bleed_ohm[0] if k.bleed else 0.0) + (1 / v.bleed_ohm[1] if k.charge == CHARGE_REST else 0.0)
+        siemens += (1 / v.bleed_ohm[0] if k.bleed else 0.0) + (
+            1 / v.bleed_ohm[1] if k.charge == CHARGE_REST else 0.0
+        )
         return amps / siemens
 
-    def slope(self, x: np.ndarray, k: Switches, s_on: float, mains_A: float, counted: tuple[bool, bool]) -> np.ndarray:
+    def slope(
+        self, x: np.ndarray, k: Switches, s_on: float, mains_A: float, counted: tuple[bool, bool]
+    ) -> np.ndarray:
         """dx/dt of the linear network, with what is beyond `counted` not integrated."""
         v = self.values
         p, low, ladder = x[0], x[1], x[2 : 2 + len(v.ladder)]
         s = s_on if k.supply_on else x[-3]
         h, u = self.high(k, p, s), p - low
-        through = u / v.leakage_ohm + u / v.fixture_ohm + sum((u - d) / r for d, (r, _) in zip(ladder, v.ladder))
+        through = (
+            u / v.leakage_ohm
+            + u / v.fixture_ohm
+            + sum((u - d) / r for d, (r, _) in zip(ladder, v.ladder, strict=True))
+        )
         into_l = -low / v.shunts_ohm[k.shunt] + through + mains_A
         dp, dl = np.linalg.solve(self.plates(), [(h - p) / v.esr_ohm - through, into_l])
-        dd = [(u - d) / (ohm * farad) for d, (ohm, farad) in zip(ladder, v.ladder)]
-        drain = s / 1e7 + s / v.supply_divider_ohm + ((s - h) / v.charge_ohm if k.charge == CHARGE_MADE else 0.0)
+        dd = [(u - d) / (ohm * farad) for d, (ohm, farad) in zip(ladder, v.ladder, strict=True)]
+        drain = (
+            s / 1e7 + s / v.supply_divider_ohm + ((s - h) / v.charge_ohm if k.charge == CHARGE_MADE else 0.0)
+        )
         ds = 0.0 if k.supply_on else -drain / 10e-9
         return np.array([dp, dl, *dd, ds, h * counted[0], low * counted[1]])
 
@@ -76,29 +88,37 @@ class Equations:
         inverse = np.linalg.inv(self.plates())
         return inverse @ [-amps, amps - clamp], inverse @ by
 
-    def period(self, x: np.ndarray, k: Switches, s: float, r: float, t0: float) -> tuple[np.ndarray, float, float]:
+    def period(
+        self, x: np.ndarray, k: Switches, s: float, r: float, t0: float
+    ) -> tuple[np.ndarray, float, float]:
         """State after 5 ms that begin at `t0`, means of h and l over the converters' windows."""
-        for begin, end in [(0.0, WINDOWS[1]), (WINDOWS[1], WINDOWS[0]), (WINDOWS[0], PERIOD_S)]:
-            counted = (end <= WINDOWS[0], end <= WINDOWS[1])
-            zero = np.zeros(len(x))
-            a = np.array([self.slope(e, k, 0.0, 0.0, counted) for e in np.eye(len(x))]).T
-            by_s = self.slope(zero, k, 1.0, 0.0, counted)
-            by_mains = self.slope(zero, k, 0.0, 1.0, counted)
-
-            def f(t: float, x: np.ndarray) -> np.ndarray:
-                supply = s + r * t + RIPPLE_V * cos(2 * OMEGA * (t0 + t))
-                d = a @ x + by_s * supply + by_mains * (MAINS_A * cos(OMEGA * (t0 + t)))
-                d[:2] += self.beyond(x)[0]
-                return d
-
-            def jacobian(t: float, x: np.ndarray) -> np.ndarray:
-                j = a.copy()
-                j[:2, :2] += self.beyond(x)[1]
-                return j
-
-            got = solve_ivp(f, (begin, end), x, method="Radau", jac=jacobian, rtol=3e-9, atol=1e-10)
-            x = got.y[:, -1]
+        for span in [(0.0, WINDOWS[1]), (WINDOWS[1], WINDOWS[0]), (WINDOWS[0], PERIOD_S)]:
+            x = self.solve(x, k, s, r, t0, span)
         return np.array([*x[:-2], 0.0, 0.0]), x[-2] / WINDOWS[0], x[-1] / WINDOWS[1]
+
+    def solve(
+        self, x: np.ndarray, k: Switches, s: float, r: float, t0: float, span: tuple[float, float]
+    ) -> np.ndarray:
+        """State at the end of `span`, seconds into the period that begins at `t0`."""
+        counted = (span[1] <= WINDOWS[0], span[1] <= WINDOWS[1])
+        zero = np.zeros(len(x))
+        a = np.array([self.slope(e, k, 0.0, 0.0, counted) for e in np.eye(len(x))]).T
+        by_s = self.slope(zero, k, 1.0, 0.0, counted)
+        by_mains = self.slope(zero, k, 0.0, 1.0, counted)
+
+        def f(t: float, x: np.ndarray) -> np.ndarray:
+            supply = s + r * t + RIPPLE_V * cos(2 * OMEGA * (t0 + t))
+            d = a @ x + by_s * supply + by_mains * (MAINS_A * cos(OMEGA * (t0 + t)))
+            d[:2] += self.beyond(x)[0]
+            return d
+
+        def jacobian(t: float, x: np.ndarray) -> np.ndarray:
+            j = a.copy()
+            j[:2, :2] += self.beyond(x)[1]
+            return j
+
+        got = solve_ivp(f, span, x, method="Radau", jac=jacobian, rtol=3e-9, atol=1e-10)
+        return got.y[:, -1]
 
 
 def circuit(values: Values) -> Circuit:
@@ -121,7 +141,8 @@ SEQUENCE = [  # contacts, slope of the supply V/s, periods
 
 
 def follow(c: Circuit, eq: Equations, sequence: list, least_v: float) -> float:
-    """Run both through the sequence; the greatest disagreement of means and states, as a share of (value + least_v)."""
+    """Run both through the sequence; the greatest disagreement of means and states, as a share of (value +
+    least_v)."""
     x = np.zeros(5 + len(eq.values.ladder))
     s, worst, t = 0.0, 0.0, 0.0
     for k, r, periods in sequence:
@@ -135,7 +156,7 @@ def follow(c: Circuit, eq: Equations, sequence: list, least_v: float) -> float:
             s = s + r * PERIOD_S if k.supply_on else x[-3]
             across, low_now, plates = c.states()
             pairs = [(across, x[0] - x[1]), (low_now, x[1]), (c.s, s), (c.high_mean, high), (c.low_mean, low)]
-            pairs += list(zip(plates.ladder_V, x[2:-3]))
+            pairs += list(zip(plates.ladder_V, x[2:-3], strict=True))
             worst = max(worst, max(abs(a - b) / (abs(b) + least_v) for a, b in pairs))
     return worst
 

@@ -48,7 +48,7 @@ def test_a_channel_that_the_converter_lacks_is_an_error():
 
 
 def test_the_thermistor_follows_its_curve():
-    # B equation: 10 kohm at 25 C is half of the feed; R(23 C) = 10 kohm exp(3977 (1/296.15 - 1/298.15)) = 10.943 kohm
+    # B equation: 10 kohm at 25 C is half of the feed; 10 kohm exp(3977 (1/296.15 - 1/298.15)) = 10.943 kohm
     assert thermistor_V(25.0) == pytest.approx(0.5)
     assert thermistor_V(23.0) == pytest.approx(10.943 / 20.943, rel=1e-4)
     assert thermistor_V(60.0) < thermistor_V(59.0) < 0.25
@@ -59,7 +59,7 @@ def test_drawn_errors_stay_within_what_is_stated_and_differ():
     drawn = [front_end.errors(seed, None) for seed in range(200)]
     for e in drawn:
         assert abs(e.charge_ohm / b.charge_ohm - 1) <= 0.02
-        assert all(abs(r / n - 1) <= 0.02 for r, n in zip(e.bleed_ohm, b.bleed_ohm))
+        assert all(abs(r / n - 1) <= 0.02 for r, n in zip(e.bleed_ohm, b.bleed_ohm, strict=True))
         assert all(abs(x) <= b.rate_tolerance for x in e.rate_error)
         assert 28.0 < e.detector_off_V < e.detector_on_V < 32.0
         assert e.operate_ms + e.bounce_ms <= 10.0 and e.bolt_ms <= 50.0
@@ -110,7 +110,7 @@ def test_the_calibration_is_true_within_what_it_says():
         errors = front_end.errors(seed, None)
         first, second = lines(errors)
         kept = calibration(errors, seed, "0" * 16, 23.0)
-        for row, line in zip(kept["volts"] + kept["supply"], [first[0], first[1], first[2], first[3]]):
+        for row, line in zip(kept["volts"] + kept["supply"], [first[k] for k in range(4)], strict=True):
             pulls.append((row["per_code"] * line.scale - 1) / row["u_rel"])
             pulls.append((row["offset_code"] - line.offset) / row["u_offset_code"])
         for k, row in enumerate(kept["amps"]):

@@ -67,7 +67,9 @@ def test_everything_written_arrives():
 
 
 def test_a_repeat_fits_the_same_part_again():
-    s = Scenario.parse('[[part]]\nlabel = "A"\ncapacitance_F = 1e-8\nrepeat = 3\n[[part]]\ncapacitance_F = 2e-8\n')
+    s = Scenario.parse(
+        '[[part]]\nlabel = "A"\ncapacitance_F = 1e-8\nrepeat = 3\n[[part]]\ncapacitance_F = 2e-8\n'
+    )
     assert [p.same_as for p in s.parts] == [None, 0, 0, None]
 
 
@@ -132,7 +134,7 @@ def test_every_kind_of_fault_has_its_deed():
 
 
 def test_the_kinds_that_scripts_rely_on_are_all_there():
-    promised = """lid_open stop_pressed lid_switch_stuck lock_fails charge_relay_welded bleed_open bleed_welded
-    shunt_relay_stuck divider_open detector_stuck converter_silent supply_overvoltage supply_stuck_on enable_stuck part_shorts
-    part_opens controller_hung controller_reset link_silent over_temperature"""
+    promised = """lid_open stop_pressed lid_switch_stuck lock_fails charge_relay_welded bleed_open
+    bleed_welded shunt_relay_stuck divider_open detector_stuck converter_silent supply_overvoltage
+    supply_stuck_on enable_stuck part_shorts part_opens controller_hung controller_reset link_silent over_temperature"""
     assert set(promised.split()) <= set(KINDS)

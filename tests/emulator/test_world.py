@@ -1,4 +1,5 @@
-"""The world driven by hand, as a board would: what it shows, who it hurts, and that it is the same every time."""
+"""The world driven by hand, as a board would: what it shows, who it hurts, and that it is the same every
+time."""
 
 from __future__ import annotations
 
@@ -93,7 +94,8 @@ def test_the_supply_slews_at_ten_volts_a_ms_and_a_staircase_is_a_ramp():
     for k in range(1, 201):
         steady.set(CHARGE, 500 * k).go(0.005)
         codes.add(steady.world.codes[1]) if k > 100 else None
-    # 100 V/s into 47 nF and its quick absorption is 4.7 uA: 2.6 mV on 560 ohm, 84 codes, without a tooth of the staircase
+    # 100 V/s into 47 nF and its quick absorption is 4.7 uA: 2.6 mV on 560 ohm, 84 codes, and no tooth of the
+    # staircase
     assert len(codes) <= 2 and min(codes) == pytest.approx(84, abs=1)
 
 
@@ -103,7 +105,9 @@ def test_lifting_the_lid_drops_supply_and_charge_relay_in_the_wiring():
     assert hand.world.truth.supply_on and not hand.world.truth.lid_open
     hand.go(0.06)
     truth = hand.world.truth
-    assert truth.lid_open and not truth.supply_on and truth.bleeding  # charge relay fallen to the second bleed
+    assert (
+        truth.lid_open and not truth.supply_on and truth.bleeding
+    )  # charge relay fallen to the second bleed
     assert not hand.has("lid_a") and hand.has("lid_b")
     assert [(h.why, round(h.volts, -1)) for h in truth.harms] == [("the lid was forced", 400.0)]
     hand.go(2.0)
@@ -189,7 +193,11 @@ def test_same_seed_same_codes_and_another_seed_others():
 
 @pytest.mark.parametrize("at", [0.0, 0.01, 0.5, 1.02])
 def test_a_snapshot_through_json_goes_on_with_the_same_codes(at):
-    text = FILM + "[[fault]]\nkind = 'part_leaks'\nat_s = 0.6\n[[fault]]\nkind = 'stop_pressed'\nat_s = 0.2\nfor_s = 1.0\n"
+    text = (
+        FILM
+        + "[[fault]]\nkind = 'part_leaks'\nat_s = 0.6\n"
+        + "[[fault]]\nkind = 'stop_pressed'\nat_s = 0.2\nfor_s = 1.0\n"
+    )
     hand = Hand(text).set(CHARGE, 300_000).go(at)
     kept = json.loads(json.dumps(hand.world.snapshot()))
     twin = Hand(text)

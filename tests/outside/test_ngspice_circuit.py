@@ -1,6 +1,8 @@
-"""The emulator's circuit against another simulator: ngspice, on a netlist written here from the reference box's own file.
+"""The emulator's circuit against another simulator: ngspice, on a netlist written here from the reference
+box's own file.
 
-Source of the other answer: ngspice (any release; transient analysis, Gear), run on the spot. Skipped where it is not installed.
+Source of the other answer: ngspice (any release; transient analysis, Gear), run on the spot. Skipped where
+it is not installed.
 """
 
 from __future__ import annotations
@@ -48,13 +50,16 @@ CASES = {
     ),
     "leaky paper, large, bled": Case(
         1e-6, 2e7, 2.0, ((0.2, 0.01), (2.0, 0.01)), 400.0,
-        ((5.0, CHARGING), (8.0, CHARGING._replace(shunt=1)), (0.03, Switches()), (0.5, Switches(bleed=False, charge=0))),
+        ((5.0, CHARGING), (8.0, CHARGING._replace(shunt=1)), (0.03, Switches()),
+         (0.5, Switches(bleed=False, charge=0))),
     ),
     "superlinear": Case(
-        100e-9, 1e11, 0.5, (), 550.0, ((1.5, CHARGING), (3.0, CHARGING._replace(shunt=1))), Superlinear(300.0, 2.7e7, 6.0)
+        100e-9, 1e11, 0.5, (), 550.0, ((1.5, CHARGING), (3.0, CHARGING._replace(shunt=1))),
+        Superlinear(300.0, 2.7e7, 6.0),
     ),
     "steep": Case(
-        10e-9, 1e11, 0.5, (), 600.0, ((0.5, CHARGING), (1.0, CHARGING._replace(shunt=0))), Superlinear(200.0, 1e7, 15.0)
+        10e-9, 1e11, 0.5, (), 600.0, ((0.5, CHARGING), (1.0, CHARGING._replace(shunt=0))),
+        Superlinear(200.0, 1e7, 15.0),
     ),
 }  # fmt: skip
 
@@ -64,7 +69,9 @@ def values(case: Case) -> Values:
     ladder = tuple((tau / (share * case.farad), share * case.farad) for tau, share in case.ladder)
     bleeds = (float(PATHS["bleed_ohm"][0]), float(PATHS["bleed_ohm"][1]))
     shunts = tuple(float(ohm) for ohm in PATHS["shunts_ohm"])
-    return Values(PATHS["charge_ohm"], bleeds, divider, divider, shunts, 1e12, case.farad, case.esr, case.ohm, ladder)
+    return Values(
+        PATHS["charge_ohm"], bleeds, divider, divider, shunts, 1e12, case.farad, case.esr, case.ohm, ladder
+    )
 
 
 def gate(name: str, closed: list[tuple[float, bool]]) -> str:
@@ -79,12 +86,13 @@ def gate(name: str, closed: list[tuple[float, bool]]) -> str:
 
 
 def netlist(case: Case, looks: list[float]) -> str:
-    """The drawing of network.py as a netlist, the part and the course of `case`, node volts at the times `looks`."""
+    """The drawing of network.py as a netlist, the part and the course of `case`, node volts at the times
+    `looks`."""
     starts, at = [], 0.0
     for seconds, contacts in case.course:
         starts.append((at, contacts))
         at += seconds
-    shunt = PATHS["shunts_ohm"]
+    shunt, rail = PATHS["shunts_ohm"], PATHS["clamp_mv"] / 1e3
     lines = [
         "dwellbench reference box",
         f"Vs s 0 PWL(0 0 {case.volts / 1e4:.9g} {case.volts})",
@@ -104,7 +112,7 @@ def netlist(case: Case, looks: list[float]) -> str:
         "Cw p 0 10p",
         "Cl l 0 100p",
         *[f"R6{k} l m{k} {ohm}\nS6{k} m{k} 0 g6{k} 0 contact" for k, ohm in enumerate(shunt)],
-        f"Bclamp l 0 I=(V(l)>{PATHS['clamp_mv'] / 1e3})*(V(l)-5)/10+(V(l)<-{PATHS['clamp_mv'] / 1e3})*(V(l)+5)/10",
+        f"Bclamp l 0 I=(V(l)>{rail})*(V(l)-{rail})/10+(V(l)<-{rail})*(V(l)+{rail})/10",
         *[
             f"Ra{k} p a{k} {tau / (share * case.farad)}\nCa{k} a{k} l {share * case.farad}"
             for k, (tau, share) in enumerate(case.ladder)
@@ -130,7 +138,9 @@ def by_ngspice(case: Case, looks: list[float], folder: Path) -> list[tuple[float
     path = folder / "box.cir"
     path.write_text(netlist(case, looks), "utf-8")
     got = subprocess.run([NGSPICE, "-b", str(path)], capture_output=True, text=True, timeout=120, check=False)
-    found = {m[1]: float(m[2]) for m in re.finditer(r"^([hl]\d+)\s*=\s*([-+.\deE]+)", got.stdout, re.MULTILINE)}
+    found = {
+        m[1]: float(m[2]) for m in re.finditer(r"^([hl]\d+)\s*=\s*([-+.\deE]+)", got.stdout, re.MULTILINE)
+    }
     assert len(found) == 2 * len(looks), got.stdout[-2000:] + got.stderr[-2000:]
     return [(found[f"h{i}"], found[f"l{i}"]) for i in range(len(looks))]
 
@@ -168,6 +178,6 @@ def test_node_volts_and_shunt_currents_agree_within_a_fifth_of_a_per_cent(name, 
     looks = settled_times(case)
     ours, theirs = by_circuit(case, looks), by_ngspice(case, looks, tmp_path)
     assert len(ours) == len(looks)
-    for (high, low), (other_high, other_low), t in zip(ours, theirs, looks):
+    for (high, low), (other_high, other_low), t in zip(ours, theirs, looks, strict=True):
         assert high == pytest.approx(other_high, rel=2e-3, abs=1e-4), t
         assert low == pytest.approx(other_low, rel=2e-3, abs=2e-6), t

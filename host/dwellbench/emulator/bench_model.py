@@ -22,10 +22,34 @@ from dwellbench.emulator.truth import Harm, Truth
 PERIOD_US = 5000
 _DRIFT_TICKS = 10
 _PLAIN = (
-    "now_us paths fixture_S divider_factor reference_factor thermistor_fixed_V detector_stuck silent stuck_code "
-    "stop_pressed controller_hung link_silent powered clock_offset_ms celsius _warm_goal _warm_K_per_s part_index runs "
-    "_run_open _danger_known _foreign_part _why _tick_us _ticks _flaw_us"
-).split()
+    # what changes and is plain data
+    "now_us",
+    "paths",
+    "fixture_S",
+    "divider_factor",
+    "reference_factor",
+    "thermistor_fixed_V",
+    "detector_stuck",
+    "silent",
+    "stuck_code",
+    "stop_pressed",
+    "controller_hung",
+    "link_silent",
+    "powered",
+    "clock_offset_ms",
+    "celsius",
+    "_warm_goal",
+    "_warm_K_per_s",
+    "part_index",
+    "runs",
+    "_run_open",
+    "_danger_known",
+    "_foreign_part",
+    "_why",
+    "_tick_us",
+    "_ticks",
+    "_flaw_us",
+)
 
 
 class BenchModel(Hardware):
@@ -41,7 +65,9 @@ class BenchModel(Hardware):
         self._run_open = False
         self.harms: list[Harm] = []
         self._danger_known, self._why = False, ""
-        self._foreign_part = False  # the part came in after the lid was opened: its charge is not the box's doing
+        self._foreign_part = (
+            False  # the part came in after the lid was opened: its charge is not the box's doing
+        )
         self._tick_us, self._ticks = TICK_US, 0
         self.next_us = 0
         self.fit(0)
@@ -230,7 +256,9 @@ class BenchModel(Hardware):
         """Everything that changes, JSON-able."""
         return {
             "plain": {name: deepcopy(getattr(self, name)) for name in _PLAIN},
-            "fitted": [[index, part.state()] for index, part in sorted(self._fitted.items()) if part.first == index],
+            "fitted": [
+                [index, part.state()] for index, part in sorted(self._fitted.items()) if part.first == index
+            ],
             "indices": {str(index): part.first for index, part in self._fitted.items()},
             "chance": [self.chance.state, self.chips.at, self.chips.stride],
             "harms": [asdict(harm) for harm in self.harms],

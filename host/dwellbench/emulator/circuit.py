@@ -1,8 +1,10 @@
-"""The circuit in time: one 5 ms period a call, in one exact step where nothing switches, in segments where something does.
+"""The circuit in time: one 5 ms period a call, in one exact step where nothing switches, in segments where
+something does.
 
-Between switchings the network is linear and its step exact (modal.py). A nonlinear branch i(u) across the plates is split into
-its tangent conductance, which goes into the network in powers of two, and the rest, held over the step at its value half a
-step ahead: second order, and stable however steep the branch is. The clamp is a switch thrown when the low node crosses it.
+Between switchings the network is linear and its step exact (modal.py). A nonlinear branch i(u) across the
+plates is split into its tangent conductance, which goes into the network in powers of two, and the rest,
+held over the step at its value half a step ahead: second order, and stable however steep the branch is.
+The clamp is a switch thrown when the low node crosses it.
 """
 
 from __future__ import annotations
@@ -16,7 +18,8 @@ from dwellbench.emulator.modal import Output
 from dwellbench.emulator.network import CLAMP_OFF, Switches, off_bleed_S
 
 _CLAMP_WATCH_V = 4.0  # a mean beyond this sends the period through the careful path
-_PROBES_S = (1e-6, 1e-5, 1e-4, 1e-3)  # after a switching the low node may strike the clamp and be back within the segment
+# after a switching the low node may strike the clamp and be back within the segment
+_PROBES_S = (1e-6, 1e-5, 1e-4, 1e-3)
 _CROSSING_S = 1e-10
 _LEAST_SEGMENT_S = 1e-6
 _LEAST_BEND_S = 1e-8
@@ -47,7 +50,7 @@ class Circuit(CircuitState):
         self._advance_drive()
 
     def _foresee(self) -> bool:
-        """Foresee the plate voltage half a period on; False if the tangent does not serve for the way there."""
+        """Foresee the plate voltage half a period on; False if the tangent does not serve that far."""
         branch = self.branch
         assert branch is not None
         now, then = self._look(self.y, self.s, self.r)
@@ -59,7 +62,7 @@ class Circuit(CircuitState):
         return self._fits(branch.slope(then), PERIOD_S)
 
     def _fits(self, slope: float, length: float) -> bool:
-        """Is what the tangent leaves of the branch small in a step of this length, or the tangent near enough?"""
+        """Is what the tangent leaves of the branch small in such a step, or the tangent near enough?"""
         g = self._tangent
         return 0.5 * g < slope < 2.0 * g or abs(slope - g) * length < 0.1 * self.values.capacitance_F
 
@@ -135,7 +138,7 @@ class Circuit(CircuitState):
         return late
 
     def _segment(self, at: float, length: float, sums: list[float]) -> None:
-        """Step by `length`; in halves, and those in halves, where a nonlinear branch bends too much on the way."""
+        """Step by `length`; in halves, and those in halves, where a nonlinear branch bends too much."""
         if self.branch is None:
             self._linear(at, length, 0.0, sums)
             return

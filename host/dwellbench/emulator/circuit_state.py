@@ -1,6 +1,8 @@
-"""What the circuit holds: its state, which contacts are where, what part is in it; going from one network to another.
+"""What the circuit holds: its state, which contacts are where, what part is in it; going from one network
+to another.
 
-Charge is conserved in every change: capacitor voltages go over as they are, and plates that are joined share.
+Charge is conserved in every change: capacitor voltages go over as they are, and plates that are joined
+share.
 """
 
 from __future__ import annotations
@@ -19,7 +21,7 @@ from dwellbench.emulator.network import CLAMP_OFF, Switches, Values, build, off_
 PERIOD_S = 5e-3
 
 
-_KEPT = "s r rc rs mc ms _clamp _tangent high_mean low_mean supply_mean".split()
+_KEPT = ("s", "r", "rc", "rs", "mc", "ms", "_clamp", "_tangent", "high_mean", "low_mean", "supply_mean")
 
 
 class Branch(Protocol):
@@ -56,7 +58,14 @@ def _modal(values: Values, switches: Switches, omega: float) -> Modal:
 class CircuitState:
     """One box's circuit with one part in it, at one instant. Volts, amperes, seconds."""
 
-    def __init__(self, values: Values, omega: float, windows_s: tuple[float, float], mains_A: complex, ripple_V: complex):
+    def __init__(
+        self,
+        values: Values,
+        omega: float,
+        windows_s: tuple[float, float],
+        mains_A: complex,
+        ripple_V: complex,
+    ):
         self.values, self.omega, self.windows = values, omega, windows_s
         self.branch: Branch | None = None
         self.s = self.r = 0.0
@@ -93,8 +102,7 @@ class CircuitState:
         modal = _modal(self.values, switches, self.omega)
         half = PERIOD_S / 2
         kick = sum(
-            c * f
-            for c, f in zip(modal.plate.modes, modal.after((0.0,) * modal.size, half, 1.0), strict=True)
+            c * f for c, f in zip(modal.plate.modes, modal.after((0.0,) * modal.size, half, 1.0), strict=True)
         )
         step = make_step(modal, PERIOD_S, *self.windows, kicked=self.branch is not None)
         return _Setting(modal, step, make_look(modal, half), kick)
@@ -126,7 +134,8 @@ class CircuitState:
         self._enter(across, low, plates)
 
     def _join(self, across: float, low: float, plate: float) -> tuple[float, float]:
-        """Voltages just after the part's plates were joined to the clips (through its lead, in nanoseconds)."""
+        """Voltages just after the part's plates were joined to the clips (through its lead, in
+        nanoseconds)."""
         c, fixture, stray, cable = (
             self.values.capacitance_F,
             reference.FIXTURE_F,

@@ -1,7 +1,8 @@
 """From node volts to codes, and the calibration that a box keeps of it.
 
-A code is gain * (node volts / ratio * (1 + divider error) + buffer offset) / step + converter offset + noise, rounded and clipped to
-16 bits. Noise of a conversion is white; the converter's own averaging is in the circuit's window means.
+A code is gain * (node volts / ratio * (1 + divider error) + buffer offset) / step + converter offset +
+noise, rounded and clipped to 16 bits. Noise of a conversion is white; the converter's own averaging is in
+the circuit's window means.
 """
 
 from __future__ import annotations
@@ -20,7 +21,8 @@ _KELVIN = 273.15
 
 
 class Line(NamedTuple):
-    """codes = volts * scale + offset, standard deviation `noise` (codes). Volts of the node, or of the converter's input."""
+    """codes = volts * scale + offset, standard deviation `noise` (codes). Volts of the node, or of the
+    converter's input."""
 
     scale: float
     offset: float
@@ -69,7 +71,8 @@ def static_volts(e: Errors, celsius: float) -> dict[str, float]:
 class Chips:
     """Both converters: `first` and `second` give the code of one conversion.
 
-    Noise walks a fixed table from a place and in a stride that are drawn anew ten times a second: cheap, and the same everywhere.
+    Noise walks a fixed table from a place and in a stride that are drawn anew ten times a second: cheap,
+    and the same everywhere.
     """
 
     def __init__(self, e: Errors, celsius: float, chance: Dice) -> None:
@@ -108,7 +111,8 @@ _U_OFFSET_CODE = 0.5
 
 
 def calibration(e: Errors, seed: int, unique_id: str, ambient_C: float) -> dict[str, Any]:
-    """What a careful owner's calibration of this box found: the truth, off by as much as its stated uncertainty says."""
+    """What a careful owner's calibration of this box found: the truth, off by as much as its stated
+    uncertainty says."""
     dice = Dice(seed, "calibration")
     first, second = lines(e)
     number, ranges = channels(), box().ranges_V

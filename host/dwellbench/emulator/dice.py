@@ -1,8 +1,8 @@
 """Chance that is the same on every machine: a small seeded generator whose whole state is one integer.
 
-The mixing steps are those of the published public-domain generator "splitmix64" (G. Steele, D. Lea, C. Flood, "Fast splittable
-pseudorandom number generators", 2014). Normal deviates are sums of twelve uniform ones: no logarithm, so no library's last
-digit; their tails end at six sigma.
+The mixing steps are those of the published public-domain generator "splitmix64" (G. Steele, D. Lea, C.
+Flood, "Fast splittable pseudorandom number generators", 2014). Normal deviates are sums of twelve uniform
+ones: no logarithm, so no library's last digit; their tails end at six sigma.
 """
 
 from __future__ import annotations
@@ -41,7 +41,8 @@ class Dice:
         return sigma * (sum(self.uniform() for _ in range(12)) - 6.0)
 
     def within(self, limit: float) -> float:
-        """Normal with a third of `limit` as its deviation, never beyond `limit`: an error that a data sheet bounds."""
+        """Normal with a third of `limit` as its deviation, never beyond `limit`: an error that a data
+        sheet bounds."""
         return max(-limit, min(limit, self.normal(limit / 3.0)))
 
     def waiting(self, mean: float) -> float:
@@ -51,7 +52,8 @@ class Dice:
 
 @lru_cache(maxsize=1)
 def noise_table() -> list[float]:
-    """TABLE_SIZE normal deviates of mean 0 and variance 1, the same for everyone; walk it from a random place in odd strides."""
+    """TABLE_SIZE normal deviates of mean 0 and variance 1, the same for everyone; walk it from a random
+    place in odd strides."""
     draw = Random(20260105).random
     raw = [sum([draw() for _ in range(12)]) for _ in range(TABLE_SIZE)]
     mean = sum(raw) / TABLE_SIZE

@@ -1,7 +1,8 @@
 """Every single fault that a scenario may ask for, and the clock that starts and ends them.
 
-`[[fault]]` has `kind`, `at_s`, `for_s` (absent: for good; a fault of the part ends when it is taken out), `run` (1 the first, the
-default; 0: `at_s` counts from power-up) and what its row below names. trouble.py does to the world what each says.
+`[[fault]]` has `kind`, `at_s`, `for_s` (absent: for good; a fault of the part ends when it is taken out),
+`run` (1 the first, the default; 0: `at_s` counts from power-up) and what its row below names. trouble.py
+does to the world what each says.
 """
 
 from __future__ import annotations
@@ -31,7 +32,8 @@ KINDS: dict[str, Kind] = {
     "lid_open": Kind("the lid is forced open, lock or no lock"),
     "stop_pressed": Kind("the stop button is pressed"),
     "lid_switch_stuck": Kind("one lid switch stays at `level`", {
-        "which": (strict.one_of("a", "b"), "a"), "level": (strict.one_of("closed", "open"), "closed")}),
+        "which": (strict.one_of("a", "b"), "a"),
+        "level": (strict.one_of("closed", "open"), "closed")}),
     "lock_fails": Kind("the bolt does not move, or is at `position` whatever it is told", {
         "position": (strict.one_of("stays", "open", "locked"), "stays")}),
     # relays and paths
@@ -42,13 +44,15 @@ KINDS: dict[str, Kind] = {
     "bleed_welded": Kind("the first bleed stays in circuit once it is"),
     "bleed_relay_stuck": Kind("the first bleed's relay does not move any more"),
     "shunt_relay_stuck": Kind("a shunt relay does not move any more, or is at `position`", {
-        "which": (strict.one_of("low", "mid"), "low"), "position": (strict.one_of("stays", "rest", "work"), "stays")}),
+        "which": (strict.one_of("low", "mid"), "low"),
+        "position": (strict.one_of("stays", "rest", "work"), "stays")}),
     "fixture_dirty": Kind("dirt of `ohm` across the clips", {"ohm": (_OHM, 1e10)}),
     # witnesses
     "divider_open": Kind("a leg of a divider is broken: reads nothing, or far too much", {
         "which": (strict.one_of("part", "supply"), "part"), "leg": (strict.one_of("top", "bottom"), "top")}),
     "divider_off": Kind("a divider reads `factor` times what it should", {
-        "which": (strict.one_of("part", "supply"), "part"), "factor": (strict.number(above=0.0, most=100.0), 0.5)}),
+        "which": (strict.one_of("part", "supply"), "part"),
+        "factor": (strict.number(above=0.0, most=100.0), 0.5)}),
     "detector_stuck": Kind("the high-voltage detector stays at `level`", {"level": _LEVEL}),
     "converter_silent": Kind("a converter does not answer", {"unit": _UNIT}),
     "converter_stuck": Kind("a converter gives the same code for ever", {
@@ -77,7 +81,8 @@ KINDS: dict[str, Kind] = {
     "power_lost": Kind("the whole box loses its power"),
     "link_silent": Kind("nothing passes the link, either way"),
     "clock_wrap": Kind("the controller's millisecond counter wraps at `at_s`; only with run = 0"),
-    "clock_jump": Kind("the controller's millisecond counter jumps", {"by_ms": (strict.whole(-(2**29), 2**29), 60_000)}),
+    "clock_jump": Kind("the controller's millisecond counter jumps", {
+        "by_ms": (strict.whole(-(2**29), 2**29), 60_000)}),
 }  # fmt: skip
 PART_KINDS = frozenset({"part_shorts", "part_leaks", "part_opens"})
 _DEFAULT_RUN = {"clock_wrap": 0}
@@ -107,7 +112,9 @@ def read_fault(source: str, where: str, raw: Any) -> Fault:
     kind = raw.get("kind") if isinstance(raw, dict) else None
     if not isinstance(kind, str) or kind not in KINDS:
         known = ", ".join(sorted(KINDS))
-        raise UsageError(f"{source}: {where} has no known kind ({kind!r})", remedy=f"Known are: {known}.", file=source)
+        raise UsageError(
+            f"{source}: {where} has no known kind ({kind!r})", remedy=f"Known are: {known}.", file=source
+        )
     own = KINDS[kind].keys
     checks = {**_COMMON, **{key: check for key, (check, _) in own.items()}}
     values = strict.read_table(source, where, raw, checks)
@@ -115,7 +122,9 @@ def read_fault(source: str, where: str, raw: Any) -> Fault:
     fault = Fault(**{"run": _DEFAULT_RUN.get(kind, 1), **values}, more=more)
     if kind == "clock_wrap" and fault.run:
         raise UsageError(
-            f"{source}: {where}: clock_wrap is set at power-up", remedy="Take run out or write run = 0.", file=source
+            f"{source}: {where}: clock_wrap is set at power-up",
+            remedy="Take run out or write run = 0.",
+            file=source,
         )
     return fault
 
@@ -129,7 +138,8 @@ class _Running:
 
 
 class FaultClock:
-    """Which faults are on. `begin` starts the clocks of a run's faults; `changes` says what starts and ends by a time."""
+    """Which faults are on. `begin` starts the clocks of a run's faults; `changes` says what starts and
+    ends by a time."""
 
     def __init__(self, faults: tuple[Fault, ...]) -> None:
         self.faults = faults

@@ -1,15 +1,17 @@
 """Oxide that leaks by field, grows by charge, and relaxes: the `[part.forming]` table.
 
-An electrolytic's dielectric is oxide grown to some voltage. Held below that it leaks little, near it much, for the current
-through oxide rises with a high power of the field; and the charge that leaks grows it thicker. So a part kept on a shelf draws
-much at first, holds below the asked voltage until its oxide has grown there, and its leakage then falls slowly. Let
+An electrolytic's dielectric is oxide grown to some voltage. Held below that it leaks little, near it much,
+for the current through oxide rises with a high power of the field; and the charge that leaks grows it
+thicker. So a part kept on a shelf draws much at first, holds below the asked voltage until its oxide has
+grown there, and its leakage then falls slowly. Let
 
-    i = formed_A (V / F)^exponent + cracks_A exp(-q / cracks_C) V / F        F = lasting oxide + fresh oxide, volts
-    dF/dt = i / coulomb_per_V while F < limit_V                              q = charge that went through the cracks
+    i = formed_A (V / F)^exponent + cracks_A exp(-q / cracks_C) V / F
+    dF/dt = i / coulomb_per_V while F < limit_V
+    F = lasting oxide + fresh oxide, volts;  q = charge that went through the cracks
 
-New oxide is fresh: under more than half of F it sets, with time constant `settle_s`; without, it is lost with `relax_s`, so that a
-part re-formed in a hurry is found leaking again later. Connected backwards, oxide conducts freely: 1 mA at `reverse_V`, with
-the sixth power of the voltage.
+New oxide is fresh: under more than half of F it sets, with time constant `settle_s`; without, it is lost
+with `relax_s`, so that a part re-formed in a hurry is found leaking again later. Connected backwards,
+oxide conducts freely: 1 mA at `reverse_V`, with the sixth power of the voltage.
 
 | key | unit | default | is |
 |---|---|---|---|
@@ -24,8 +26,8 @@ the sixth power of the voltage.
 | relax_s | s | 7200 | fresh oxide lost without |
 | reverse_V | V | 1.5 | where 1 mA flows backwards |
 
-The shape follows general accounts of anodic oxide (field-assisted conduction, growth by charge); the numbers are illustrative,
-from memory, and of no particular make.
+The shape follows general accounts of anodic oxide (field-assisted conduction, growth by charge); the
+numbers are illustrative, from memory, and of no particular make.
 """
 
 from __future__ import annotations

@@ -1,8 +1,10 @@
-"""What is not quite as the drawing says in one box: true resistors, gains, offsets, noise, clocks; and the box's knowledge of them.
+"""What is not quite as the drawing says in one box: true resistors, gains, offsets, noise, clocks; and the
+box's knowledge of them.
 
-Everything is drawn from the seed inside the tolerance that the part's data sheet or the reference box states. A `[front_end]`
-table in the scenario fixes single values: its keys are the fields of `Errors`; besides, `ideal = true` starts from a box
-without errors, noise, ripple or pickup instead of a drawn one, and `calibrated = false` leaves no calibration in the box.
+Everything is drawn from the seed inside the tolerance that the part's data sheet or the reference box
+states. A `[front_end]` table in the scenario fixes single values: its keys are the fields of `Errors`;
+besides, `ideal = true` starts from a box without errors, noise, ripple or pickup instead of a drawn one,
+and `calibrated = false` leaves no calibration in the box.
 """
 
 from __future__ import annotations
@@ -139,7 +141,11 @@ def drawn(b: Box, dice: Dice) -> Errors:
     return Errors(
         charge_ohm=near(b.charge_ohm, _CHARGE),
         bleed_ohm=(near(b.bleed_ohm[0], bleed), near(b.bleed_ohm[1], bleed)),
-        shunts_ohm=(near(b.shunts_ohm[0], _SHUNT), near(b.shunts_ohm[1], _SHUNT), near(b.shunts_ohm[2], _SHUNT)),
+        shunts_ohm=(
+            near(b.shunts_ohm[0], _SHUNT),
+            near(b.shunts_ohm[1], _SHUNT),
+            near(b.shunts_ohm[2], _SHUNT),
+        ),
         fixture_ohm=1e12 * 2.0 ** dice.within(1.5),
         part_divider_error=dice.within(_DIVIDER),
         supply_divider_error=dice.within(_DIVIDER),
@@ -198,7 +204,9 @@ def values(e: Errors) -> Values:
 def windows_s(e: Errors) -> Pair:
     """How long each converter averages: its own idea of 1/250 s."""
     b = box()
-    return 1.0 / (b.samples_per_s * (1.0 + e.rate_error[0])), 1.0 / (b.samples_per_s * (1.0 + e.rate_error[1]))
+    return 1.0 / (b.samples_per_s * (1.0 + e.rate_error[0])), 1.0 / (
+        b.samples_per_s * (1.0 + e.rate_error[1])
+    )
 
 
 assert {f.name for f in fields(Errors)} == set(_CHECKS), "every field of Errors has its check"

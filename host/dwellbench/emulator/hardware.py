@@ -1,4 +1,5 @@
-"""The box's hardware without its controller: circuit, relays, supply, lid, converters, and what faults have changed in them."""
+"""The box's hardware without its controller: circuit, relays, supply, lid, converters, and what faults
+have changed in them."""
 
 from __future__ import annotations
 
@@ -41,7 +42,9 @@ class Hardware:
         self.lid = Lid(e.bolt_ms, Dice(seed, "lid"))
         self.chips = Chips(e, self.scenario.ambient_C, self.chance)
         omega = 6.283185307179586 * e.mains_Hz
-        self.circuit = Circuit(self._box_values, omega, front_end.windows_s(e), complex(e.mains_A), complex(e.ripple_V))
+        self.circuit = Circuit(
+            self._box_values, omega, front_end.windows_s(e), complex(e.mains_A), complex(e.ripple_V)
+        )
 
     def _make_overrides(self) -> None:
         """What faults change; each is back at its first value when the fault is over."""
@@ -114,7 +117,8 @@ class Hardware:
         )
 
     def contact_changes(self, now: int, end: int) -> list[tuple[float, Switches]]:
-        """Contacts thrown in the period from `now` to `end`, in order; the first entry is how they stand at its beginning."""
+        """Contacts thrown in the period from `now` to `end`, in order; the first entry is how they stand
+        at its beginning."""
         changes = []
         contacts = self._contacts()
         if contacts != self.circuit.contacts:

@@ -32,7 +32,8 @@ class _Later:
 
 @dataclass
 class LidFault:
-    """What faults do to it: a switch's contact stuck closed or open; the bolt not moving, or always in one place."""
+    """What faults do to it: a switch's contact stuck closed or open; the bolt not moving, or always in one
+    place."""
 
     switch: dict[str, bool] = field(default_factory=dict)  # "a" or "b": says closed
     bolt_stays: bool = False
@@ -40,7 +41,8 @@ class LidFault:
 
 
 class Lid:
-    """`is_open` the lid itself; `closed_a`, `closed_b` what each switch says; `bolt` True when in the locked position."""
+    """`is_open` the lid itself; `closed_a`, `closed_b` what each switch says; `bolt` True when in the
+    locked position."""
 
     def __init__(self, bolt_ms: float, dice: Dice) -> None:
         self._bolt_us = round(bolt_ms * 1e3)
@@ -81,7 +83,8 @@ class Lid:
             self.power(self._powered, now_us)
 
     def power(self, released: bool, now_us: int) -> None:
-        """Power on the release (already gated by the detector). Without it the spring closes the bolt, if the lid is shut."""
+        """Power on the release (already gated by the detector). Without it the spring closes the bolt, if
+        the lid is shut."""
         self._powered = released
         if not self.fault.bolt_stays and (released or not self.is_open):
             self._bolt.send(not released, now_us + self._bolt_us)

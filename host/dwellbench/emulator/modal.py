@@ -1,9 +1,10 @@
-"""A network taken apart into modes: exact steps of any length, exact window means, one generated function for a whole period.
+"""A network taken apart into modes: exact steps of any length, exact window means, one generated function
+for a whole period.
 
-State `y` is a tuple, one number a mode: what is left of the mode after everything forced is taken off, so between switchings a
-period is one product a mode. Forced are: the supply s(t) = s0 + r t (through `at_s`, `at_r`), the clamp, and two sinusoids that
-are exact phasors: ripple of the supply and mains current into the low node. A nonlinear branch's current j, held over the
-step, is added by `kick`.
+State `y` is a tuple, one number a mode: what is left of the mode after everything forced is taken off, so
+between switchings a period is one product a mode. Forced are: the supply s(t) = s0 + r t (through `at_s`,
+`at_r`), the clamp, and two sinusoids that are exact phasors: ripple of the supply and mains current into
+the low node. A nonlinear branch's current j, held over the step, is added by `kick`.
 """
 
 from __future__ import annotations
@@ -29,7 +30,8 @@ Step = Callable[..., tuple[Modes, float, float]]
 
 
 class Drive(NamedTuple):
-    """What is forced, at one instant: supply V and its slope V/s; ripple V and mains A as cosine and sine parts."""
+    """What is forced, at one instant: supply V and its slope V/s; ripple V and mains A as cosine and sine
+    parts."""
 
     s: float
     r: float
@@ -86,7 +88,9 @@ class Modal:
         self.high, self.low = Output(self, net.high), Output(self, net.low)
         self.plate = Output(self, Row({net.plate: 1.0}))
         self.supply = Output(self, Row({net.supply_state: 1.0})) if net.supply_state >= 0 else None
-        self.plate_force = [-self.shape[net.plate][k] for k in n]  # of one ampere of conduction through the part
+        self.plate_force = [
+            -self.shape[net.plate][k] for k in n
+        ]  # of one ampere of conduction through the part
 
     def forced(self, d: Drive) -> list[float]:
         """The forced part of every mode."""
@@ -156,7 +160,8 @@ def make({coefficients}):
 
 @lru_cache(maxsize=64)
 def _maker(size: int, driven: bool, kicked: bool) -> Callable[..., Step]:
-    """Unrolled source for networks of `size` modes, with the supply's terms if `driven`, with conduction if `kicked`."""
+    """Unrolled source for networks of `size` modes, with the supply's terms if `driven`, with conduction
+    if `kicked`."""
     n = range(size)
     after = [f"y{k}*e{k}" + (f"+j*k{k}" if kicked else "") for k in n]
     names = [f"e{k}" for k in n] + ([f"k{k}" for k in n] if kicked else [])
@@ -198,13 +203,16 @@ def _mean_coefficients(modal: Modal, out: Output, time: float, driven: bool, kic
 
 
 def make_look(modal: Modal, ahead: float) -> Callable[[Modes, float, float], tuple[float, float]]:
-    """look(y, s, r) -> the plate voltage now, and `ahead` seconds on if nothing nonlinear flowed; ripple and mains left out."""
+    """look(y, s, r) -> the plate voltage now, and `ahead` seconds on if nothing nonlinear flowed; ripple
+    and mains left out."""
     out = modal.plate
     now, then = out.modes, [c * decay(rate, ahead) for c, rate in zip(out.modes, modal.rate, strict=True)]
     n = range(modal.size)
     rows = ["+".join(f"{q}{k}*y{k}" for k in n) + "+f+r*b" for q in "pq"]
     source = f"def make({','.join([f'p{k},q{k}' for k in n])},a,b,c,d):\n def look(y,s,r):\n  "
-    source += ",".join(f"y{k}" for k in n) + f",=y\n  f=s*a+c\n  return {rows[0]},{rows[1]}+r*d\n return look\n"
+    source += (
+        ",".join(f"y{k}" for k in n) + f",=y\n  f=s*a+c\n  return {rows[0]},{rows[1]}+r*d\n return look\n"
+    )
     scope: dict[str, Callable[..., Callable[[Modes, float, float], tuple[float, float]]]] = {}
     exec(compile(source, f"<look of {modal.size} modes>", "exec"), scope)
     pairs = [value for pair in zip(now, then, strict=True) for value in pair]
@@ -212,8 +220,9 @@ def make_look(modal: Modal, ahead: float) -> Callable[[Modes, float, float], tup
 
 
 def make_step(modal: Modal, period: float, high_window: float, low_window: float, kicked: bool) -> Step:
-    """step(y, s, r, rc, rs, mc, ms, j) -> (y a period later, mean of the high node over the first `high_window` seconds, of the
-    low node over `low_window`). rc, rs: ripple's cosine and sine parts at the start; mc, ms the mains'. Clamp off."""
+    """step(y, s, r, rc, rs, mc, ms, j) -> (y a period later, mean of the high node over the first
+    `high_window` seconds, of the low node over `low_window`). rc, rs: ripple's cosine and sine parts at
+    the start; mc, ms the mains'. Clamp off."""
     driven = modal.net.supply_state < 0 and any(modal.net.from_supply)
     values = [decay(rate, period) for rate in modal.rate]
     if kicked:

@@ -1,9 +1,10 @@
 """Eigenvalues of a small symmetric matrix, and the few functions of them that exact steps need.
 
-A network of resistors and capacitors, C dx/dt = -G x + b, has a symmetric C^-1/2 G C^-1/2, so it falls apart into modes that
-each decay alone. Cyclic Jacobi rotations are used because they keep small eigenvalues accurate to their own last digits beside
-huge ones, when the matrix is graded (J. Demmel, K. Veselic, "Jacobi's method is more accurate than QR", 1992): here 56 ns of a
-shunt stand beside years of a good part's leakage. Plain arithmetic, so every machine gets the same digits.
+A network of resistors and capacitors, C dx/dt = -G x + b, has a symmetric C^-1/2 G C^-1/2, so it falls
+apart into modes that each decay alone. Cyclic Jacobi rotations are used because they keep small
+eigenvalues accurate to their own last digits beside huge ones, when the matrix is graded (J. Demmel, K.
+Veselic, "Jacobi's method is more accurate than QR", 1992): here 56 ns of a shunt stand beside years of a
+good part's leakage. Plain arithmetic, so every machine gets the same digits.
 """
 
 from __future__ import annotations

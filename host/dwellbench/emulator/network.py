@@ -8,12 +8,13 @@
                                   |
                                   l --- shunt --- ground;  100 pF;  clamp to +/-5 V
 
-States, in this order: u (across the part's plates; across the empty clips when a lead is open), l (low node to ground), then
-when a lead is open the part's own plate voltage, then the ladder's capacitor voltages, then the supply's output when it is off
-and joined by the charge relay (on, it is a source). Chosen so that the capacitance matrix is all but diagonal.
+States, in this order: u (across the part's plates; across the empty clips when a lead is open), l (low
+node to ground), then when a lead is open the part's own plate voltage, then the ladder's capacitor
+voltages, then the supply's output when it is off and joined by the charge relay (on, it is a source).
+Chosen so that the capacitance matrix is all but diagonal.
 
-Simplifications: stray capacitance of the high node sits behind the part's series resistance when a part is connected
-(picoseconds); buffers draw nothing.
+Simplifications: stray capacitance of the high node sits behind the part's series resistance when a part is
+connected (picoseconds); buffers draw nothing.
 """
 
 from __future__ import annotations
@@ -55,7 +56,9 @@ class Switches(NamedTuple):
     supply_on: bool = False
     clamp: int = CLAMP_OFF
     connected: bool = True  # both leads of the part
-    extra_S: float = 0.0  # linear conductance beside the part's own leakage: short, late leak, tangent of a nonlinear one
+    extra_S: float = (
+        0.0  # linear conductance beside the part's own leakage: short, late leak, tangent of a nonlinear one
+    )
     charge_open: bool = False  # faults: a broken charge resistor, second bleed, divider
     bleed2_open: bool = False
     divider_open: bool = False
@@ -96,7 +99,9 @@ class _Builder:
             for j, b in across.items():
                 self.c[i][j] += farad * a * b
 
-    def resistor(self, siemens: float, across: dict[int, float], supply: float = 0.0, clamp_V: float = 0.0) -> None:
+    def resistor(
+        self, siemens: float, across: dict[int, float], supply: float = 0.0, clamp_V: float = 0.0
+    ) -> None:
         """Between a linear form of the states and `supply` times the supply's source plus `clamp_V`."""
         for i, a in across.items():
             for j, b in across.items():
@@ -116,10 +121,11 @@ def _to_ground(v: Values, k: Switches) -> float:
 
 
 def _paths(b: _Builder, v: Values, k: Switches, node: dict[int, float], lead_S: float, supply: int) -> Row:
-    """Join ground and supply to `node` through a lead of `lead_S` (0: the node itself), and give the high node's row.
+    """Join ground and supply to `node` through a lead of `lead_S` (0: the node itself), and give the high
+    node's row.
 
-    The lead, the paths to ground and to the supply form a star at the high node, which has no capacitance of its own: star to
-    mesh, every term positive, so nothing cancels.
+    The lead, the paths to ground and to the supply form a star at the high node, which has no capacitance
+    of its own: star to mesh, every term positive, so nothing cancels.
     """
     ground = _to_ground(v, k)
     made = k.charge == CHARGE_MADE and not k.charge_open

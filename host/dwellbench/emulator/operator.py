@@ -1,4 +1,5 @@
-"""The person at the bench: waits for the lock to let go after a run, opens the lid, takes the part out, fits the next, closes.
+"""The person at the bench: waits for the lock to let go after a run, opens the lid, takes the part out,
+fits the next, closes.
 
 Knows nothing but what can be seen and heard: that a run has been, and that the bolt is back.
 """

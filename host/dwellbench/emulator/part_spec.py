@@ -33,7 +33,8 @@ class LateLeak:
 
 @dataclass(frozen=True)
 class Intermittent:
-    """A lead that lets go, or a leak of `ohm` that comes, for `for_s` every `every_s` (means of exponential times)."""
+    """A lead that lets go, or a leak of `ohm` that comes, for `for_s` every `every_s` (means of
+    exponential times)."""
 
     what: str  # "lead" or "leak"
     every_s: float = 5.0
@@ -121,7 +122,9 @@ _FORMING: dict[str, strict.Check] = {
 }
 
 
-def _sub(source: str, where: str, values: dict[str, Any], key: str, fields: dict[str, strict.Check], need: set[str]) -> Any:
+def _sub(
+    source: str, where: str, values: dict[str, Any], key: str, fields: dict[str, strict.Check], need: set[str]
+) -> Any:
     """The checked sub-table `key` with everything in `need`, or None."""
     if key not in values:
         return None
@@ -129,7 +132,9 @@ def _sub(source: str, where: str, values: dict[str, Any], key: str, fields: dict
     missing = sorted(need - table.keys())
     if missing:
         lacks = ", ".join(missing)
-        raise UsageError(f"{source}: {key} of {where} lacks {lacks}", remedy=f"Add {lacks}.", file=source, key=key)
+        raise UsageError(
+            f"{source}: {key} of {where} lacks {lacks}", remedy=f"Add {lacks}.", file=source, key=key
+        )
     return table
 
 

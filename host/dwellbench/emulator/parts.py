@@ -1,4 +1,5 @@
-"""A part in the hand and in the box: what the circuit needs of it, and what it remembers from one fitting to the next."""
+"""A part in the hand and in the box: what the circuit needs of it, and what it remembers from one fitting
+to the next."""
 
 from __future__ import annotations
 
@@ -87,7 +88,11 @@ class Fitted:
             branches.append(self.oxide)
         if not branches:
             return None
-        return branches[0] if len(branches) == 1 and not self.spec.reversed else Sum(branches, self.spec.reversed)
+        return (
+            branches[0]
+            if len(branches) == 1 and not self.spec.reversed
+            else Sum(branches, self.spec.reversed)
+        )
 
     def values(self, box: Values) -> Values:
         """The circuit's values with this part in `box`."""
@@ -116,7 +121,9 @@ class Fitted:
 
     def lie_shorted(self, time_s: float) -> None:
         """A time out of the box with a shorting wire round the leads."""
-        ladder = [v * exp(-time_s / tau) for v, (tau, _) in zip(self.plates.ladder_V, self.ladder, strict=True)]
+        ladder = [
+            v * exp(-time_s / tau) for v, (tau, _) in zip(self.plates.ladder_V, self.ladder, strict=True)
+        ]
         self.plates = Plates(0.0, ladder)
         if self.oxide:
             self.oxide.rest(time_s)

@@ -1,4 +1,5 @@
-"""The reference box's numbers in SI units, read from the one file that states them, and the few that only physics needs."""
+"""The reference box's numbers in SI units, read from the one file that states them, and the few that only
+physics needs."""
 
 from __future__ import annotations
 
@@ -9,8 +10,8 @@ from typing import Any
 
 from dwellbench import assets
 
-
-# What the drawing of the box does not state but the physics cannot do without. Typical of the construction, no source.
+# What the drawing of the box does not state but the physics cannot do without. Typical of the construction,
+# no source.
 STRAY_F = 10e-12  # wiring of the high node to the guard
 FIXTURE_F = 2e-12  # empty clips, high to low
 LOW_F = 100e-12  # cable, clamp and buffer at the low node
@@ -108,3 +109,15 @@ def channels() -> dict[str, int]:
     """Converter channels by name."""
     codes = json.loads((assets.protocol() / "codes.json").read_text("utf-8"))
     return {row["id"]: row["code"] for row in codes["channels"]}
+
+
+@lru_cache(maxsize=1)
+def stages() -> dict[str, int]:
+    """Codes of the stages by name."""
+    codes = json.loads((assets.protocol() / "codes.json").read_text("utf-8"))
+    return {row["id"]: row["code"] for row in codes["stages"]}
+
+
+def flags() -> dict[str, int]:
+    """Masks of a sample's flags by name."""
+    return bits("flags")

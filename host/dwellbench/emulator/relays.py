@@ -1,7 +1,8 @@
 """Relays: a coil's change becomes contacts that travel, touch and bounce, each at its own microsecond.
 
-A changeover contact rests, travels (touching neither side), then works; coming down, the reverse. Where it arrives it may bounce
-one to three times. From the coil's change to the last touch never takes more than the reference box's 10 ms.
+A changeover contact rests, travels (touching neither side), then works; coming down, the reverse. Where it
+arrives it may bounce one to three times. From the coil's change to the last touch never takes more than
+the reference box's 10 ms.
 """
 
 from __future__ import annotations
@@ -29,7 +30,8 @@ class Event:
 
 
 class Relays:
-    """The four relays of the box. `position` is where each contact is; `due` the events still to come, in order of time."""
+    """The four relays of the box. `position` is where each contact is; `due` the events still to come, in
+    order of time."""
 
     def __init__(self, errors: Errors, dice: Dice) -> None:
         self._operate_us, self._release_us = errors.operate_ms * 1e3, errors.release_ms * 1e3
@@ -63,7 +65,10 @@ class Relays:
             close_at = open_at + self._dice.uniform(50.0, 300.0)
             if close_at > end:
                 break
-            events += [Event(now_us + int(open_at), which, TRAVEL), Event(now_us + int(close_at), which, goal)]
+            events += [
+                Event(now_us + int(open_at), which, TRAVEL),
+                Event(now_us + int(close_at), which, goal),
+            ]
             at = close_at
         return events
 

@@ -1,7 +1,9 @@
-"""A scenario: which parts are fitted one after the other, by what operator, into what box, and what goes wrong when.
+"""A scenario: which parts are fitted one after the other, by what operator, into what box, and what goes
+wrong when.
 
-TOML, read strictly. Packaged ones lie in `scenarios/` and are named without ending (`film`); anything else is a file. All numbers
-in SI units. What a key means is said here and, for the longer tables, in forming.py, front_end.py and faults.py.
+TOML, read strictly. Packaged ones lie in `scenarios/` and are named without ending (`film`); anything else
+is a file. All numbers in SI units. What a key means is said here and, for the longer tables, in
+forming.py, front_end.py and faults.py.
 """
 
 from __future__ import annotations
@@ -23,7 +25,8 @@ _SECONDS = strict.number(least=0.0, most=1e7)
 
 @dataclass(frozen=True)
 class OperatorSpec:
-    """The lid is opened `opens_after_s` after the lock lets go, and closed over the next part `handling_s` later."""
+    """The lid is opened `opens_after_s` after the lock lets go, and closed over the next part `handling_s`
+    later."""
 
     handling_s: float = 20.0
     opens_after_s: float = 1.0
@@ -53,10 +56,14 @@ class Scenario:
         except OSError as error:
             known = ", ".join(sorted(packaged()))
             raise UsageError(
-                f"There is no scenario {name!r}: {error.strerror}", remedy=f"Packaged are: {known}.", file=str(name)
+                f"There is no scenario {name!r}: {error.strerror}",
+                remedy=f"Packaged are: {known}.",
+                file=str(name),
             ) from None
         except UnicodeDecodeError:
-            raise UsageError(f"{name} is not UTF-8 text", remedy="Give a TOML file.", file=str(name)) from None
+            raise UsageError(
+                f"{name} is not UTF-8 text", remedy="Give a TOML file.", file=str(name)
+            ) from None
 
     @classmethod
     def parse(cls, text: str, source: str = "scenario", name: str = "scenario") -> Scenario:
@@ -68,7 +75,9 @@ class Scenario:
         values = strict.read_table(source, "the top level", raw, _TOP)
         return cls(
             name=name,
-            operator=OperatorSpec(**strict.read_table(source, "[operator]", values.pop("operator", {}), _OPERATOR)),
+            operator=OperatorSpec(
+                **strict.read_table(source, "[operator]", values.pop("operator", {}), _OPERATOR)
+            ),
             parts=_parts(source, values.pop("part", [])),
             front_end=_front_end(source, values.pop("front_end", None)),
             faults=tuple(
@@ -103,9 +112,13 @@ _OPERATOR: dict[str, strict.Check] = {
     "opens_after_s": _SECONDS,
     "closes_lid": strict.flag,
 }
+
+
 def _tables(source: str, name: str, raw: Any) -> list[Any]:
     if not isinstance(raw, list):
-        raise UsageError(f"{source}: {name} must be written [[{name}]]", remedy=f"Use [[{name}]].", file=source)
+        raise UsageError(
+            f"{source}: {name} must be written [[{name}]]", remedy=f"Use [[{name}]].", file=source
+        )
     return raw
 
 
@@ -114,7 +127,8 @@ def _front_end(source: str, raw: Any) -> dict[str, Any] | None:
 
 
 def _parts(source: str, raw: Any) -> tuple[PartSpec, ...]:
-    """Every fitting in order. A table with nothing but the label of an earlier part, and a `repeat`, fit that very part again."""
+    """Every fitting in order. A table with nothing but the label of an earlier part, and a `repeat`, fit
+    that very part again."""
     fitted: list[PartSpec] = []
     for i, table in enumerate(_tables(source, "part", raw), 1):
         again = _again(fitted, table)

@@ -1,4 +1,5 @@
-"""Reading TOML tables strictly: a key that is not known, or a value that cannot be, is refused by name, with what to do."""
+"""Reading TOML tables strictly: a key that is not known, or a value that cannot be, is refused by name,
+with what to do."""
 
 from __future__ import annotations
 
@@ -83,7 +84,8 @@ def anything(value: Any) -> Any:
 
 
 def read_table(source: str, where: str, raw: Any, fields: Mapping[str, Check]) -> dict[str, Any]:
-    """The table's values, checked. `source` is the file, `where` the table within it; both go into the message."""
+    """The table's values, checked. `source` is the file, `where` the table within it; both go into the
+    message."""
     if not isinstance(raw, dict):
         raise UsageError(f"{source}: {where} must be a table", remedy=f"Write it as {where}.", file=source)
     return {key: read_value(source, where, key, value, fields) for key, value in raw.items()}

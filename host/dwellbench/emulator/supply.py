@@ -1,7 +1,9 @@
-"""The high-voltage supply: follows its setting in straight lines, at most 10 V/ms; drifts; must be pumped to stay on.
+"""The high-voltage supply: follows its setting in straight lines, at most 10 V/ms; drifts; must be pumped
+to stay on.
 
-Its setting is filtered over one control period, so each new setting is reached in a straight line through the period after it was
-given, and a staircase of settings is a ramp. On, it holds its voltage either way; off, its output floats on 10 nF and a bleeder.
+Its setting is filtered over one control period, so each new setting is reached in a straight line through
+the period after it was given, and a staircase of settings is a ramp. On, it holds its voltage either way;
+off, its output floats on 10 nF and a bleeder.
 """
 
 from __future__ import annotations
@@ -48,7 +50,9 @@ class Supply:
             return self.fault.stuck_V
         if self.fault.dead:
             return 0.0
-        offset = self._drifted + self.drift_V_per_s * (now_us - self._since_us) * 1e-6 if self.setting_mv else 0.0
+        offset = (
+            self._drifted + self.drift_V_per_s * (now_us - self._since_us) * 1e-6 if self.setting_mv else 0.0
+        )
         return max(0.0, self._gain * self.setting_mv * 1e-3 + offset + self.fault.by_V)
 
     @property
@@ -59,7 +63,8 @@ class Supply:
         return self._drift + self.fault.drift_V_per_s
 
     def slope(self, volts: float, now_us: int) -> tuple[float, float]:
-        """Slope for the period that begins now at `volts`, V/s; and the voltage to begin from (the same, less rounding)."""
+        """Slope for the period that begins now at `volts`, V/s; and the voltage to begin from (the same,
+        less rounding)."""
         target = self.target_V(now_us)
         change = target - volts
         if abs(change) < _NEAR_V:
@@ -72,7 +77,8 @@ class Supply:
         return steep + self.drift_V_per_s, volts
 
     def wander(self, now_us: int) -> None:
-        """Once a second: another slope of drift, never above the stated one, pulled back when it has gone far."""
+        """Once a second: another slope of drift, never above the stated one, pulled back when it has gone
+        far."""
         self._drifted += self.drift_V_per_s * (now_us - self._since_us) * 1e-6
         self._since_us = now_us
         limit = self._most_drift

@@ -81,7 +81,7 @@ def _dirt(w: World, f: Fault, on: bool) -> None:
 
 
 def _divider(w: World, f: Fault, on: bool) -> None:
-    # without its top leg the input is pulled to ground; without its bottom leg it rises to the node's own volts
+    # without its top leg the input is pulled to ground; without its bottom leg it rises to the node's volts
     which = f.more["which"]
     factor = 0.0 if f.more["leg"] == "top" else 1001.0
     w.divider_factor[which] = factor if on else 1.0

@@ -1,8 +1,10 @@
-"""The whole bench in virtual time: box without its controller, part, operator and faults, one control period a call.
+"""The whole bench in virtual time: box without its controller, part, operator and faults, one control
+period a call.
 
-A board asks for nothing but `period`, `inputs`, `codes` and the few flags; what only a test may know is behind `truth`.
-Nothing here reads a clock or sleeps: time passes when `period` is called, and the same scenario, seed and calls give the
-same codes on every machine. This file is the periods; what is in the box and who is at it is bench_model.py.
+A board asks for nothing but `period`, `inputs`, `codes` and the few flags; what only a test may know is
+behind `truth`. Nothing here reads a clock or sleeps: time passes when `period` is called, and the same
+scenario, seed and calls give the same codes on every machine. This file is the periods; what is in the box
+and who is at it is bench_model.py.
 """
 
 from __future__ import annotations
@@ -21,23 +23,28 @@ NO_CONVERSION = -1
 CAUSE_POWER, CAUSE_RESET = 0, 1
 _WRAP = 1 << 30
 _IN, _OUT = bits("inputs"), bits("outputs")
-_COILS = ((BLEED, _OUT["bleed_open"]), (CHARGE, _OUT["charge"]), (MID, _OUT["mid_shunt"]), (LOW, _OUT["low_open"]))
+_COILS = (
+    (BLEED, _OUT["bleed_open"]),
+    (CHARGE, _OUT["charge"]),
+    (MID, _OUT["mid_shunt"]),
+    (LOW, _OUT["low_open"]),
+)
 _RELEASE = _OUT["release"]
 
 
 class World(BenchModel):
     """`World(scenario, seed)`; `seed` None takes the scenario's.
 
-    Call `period` once every 5 ms of virtual time with what the controller put out; then read `inputs` and `codes`.
+    Call `period` once every 5 ms of virtual time with what the controller put out; then read `inputs` and
+    `codes`.
 
-    inputs            raw levels after the period, bits as codes.json `inputs`
-    codes             two codes, converter 0 and 1, of the conversions started at the beginning of the period
-    now_us            virtual time since power-up, microseconds; goes on through resets
-    controller_hung   while True the controller must not be stepped: call `period` with outputs held, nothing else
-    link_silent       while True no byte passes either way
-    unique_id         16 hex digits, from the seed
-    calibration       as the box keeps it, drawn within its own stated uncertainty; None if `[front_end] calibrated = false`
-    truth             what is really so, for tests only
+    inputs            raw levels after the period, bits as codes.json `inputs` codes             two codes,
+    converter 0 and 1, of the conversions started at the beginning of the period now_us            virtual
+    time since power-up, microseconds; goes on through resets controller_hung   while True the controller
+    must not be stepped: call `period` with outputs held, nothing else link_silent       while True no byte
+    passes either way unique_id         16 hex digits, from the seed calibration       as the box keeps it,
+    drawn within its own stated uncertainty; None if `[front_end] calibrated = false` truth
+    what is really so, for tests only
     """
 
     def __init__(self, scenario: Scenario, seed: int | None = None) -> None:
@@ -49,7 +56,9 @@ class World(BenchModel):
         self._hv = False
         self._reset = -1
         keep = (scenario.front_end or {}).get("calibrated", True)
-        self.calibration = calibration(self.errors, self.seed, self.unique_id, scenario.ambient_C) if keep else None
+        self.calibration = (
+            calibration(self.errors, self.seed, self.unique_id, scenario.ambient_C) if keep else None
+        )
         wrap = [round(f.at_s * 1e3) for f in scenario.faults if f.kind == "clock_wrap"]
         self.clock_offset_ms = (_WRAP - wrap[0]) if wrap else scenario.clock_ms
         self._pump_hold_us = round(box().pump_hold_s * 1e6)
@@ -59,11 +68,12 @@ class World(BenchModel):
     # -- what a board calls
 
     def period(self, outputs: int, supply_mv: int, pumps: int, feeds: int, conv0: int, conv1: int) -> None:
-        """Advance 5 ms. `outputs` bits as codes.json; `pumps`, `feeds`: how often the enable was toggled, the watchdog fed;
-        `conv0`, `conv1`: channel * 2 + range of the conversion started on each converter, or NO_CONVERSION.
+        """Advance 5 ms. `outputs` bits as codes.json; `pumps`, `feeds`: how often the enable was toggled,
+        the watchdog fed; `conv0`, `conv1`: channel * 2 + range of the conversion started on each
+        converter, or NO_CONVERSION.
 
-        `codes` then holds what those conversions give (mean over the chip's own 4 ms of this period). KeyError for a channel
-        that the converter does not have.
+        `codes` then holds what those conversions give (mean over the chip's own 4 ms of this period).
+        KeyError for a channel that the converter does not have.
         """
         now = self.now_us
         supply, circuit = self.supply, self.circuit
@@ -104,8 +114,9 @@ class World(BenchModel):
         return (self.now_us // 1000 + self.clock_offset_ms) % _WRAP
 
     def take_reset(self) -> int:
-        """-1, or CAUSE_POWER / CAUSE_RESET once when the controller is to start anew now (watchdog, fault, power). The board
-        drops RAM (and scratch after a power loss) and calls with outputs 0 until the new controller puts something out."""
+        """-1, or CAUSE_POWER / CAUSE_RESET once when the controller is to start anew now (watchdog, fault,
+        power). The board drops RAM (and scratch after a power loss) and calls with outputs 0 until the new
+        controller puts something out."""
         cause, self._reset = self._reset, -1
         if cause >= 0:
             self._fed_us = -1
@@ -113,8 +124,9 @@ class World(BenchModel):
         return cause
 
     def run_began(self) -> None:
-        """The board tells that a run has begun (the marker is being kept), so that faults with `run` and `at_s` find it and
-        the operator knows what the next release of the lock means. Without it a run is seen when the supply is first pumped."""
+        """The board tells that a run has begun (the marker is being kept), so that faults with `run` and
+        `at_s` find it and the operator knows what the next release of the lock means. Without it a run is
+        seen when the supply is first pumped."""
         self.begin_run()
 
     # -- inside a period
@@ -140,7 +152,8 @@ class World(BenchModel):
         self._wire()
 
     def _wire(self) -> None:
-        """Coils and lock, as outputs and wiring let them: the charge relay's coil needs the lid, the release the detector."""
+        """Coils and lock, as outputs and wiring let them: the charge relay's coil needs the lid, the
+        release the detector."""
         for relay, mask in _COILS:
             on = bool(self._outputs & mask)
             self.relays.drive(relay, on and (relay != CHARGE or self.lid.wired), self.now_us)
@@ -151,8 +164,12 @@ class World(BenchModel):
     def _switch_supply(self) -> None:
         """On while pumped, enabled by the lid's wiring, and powered."""
         supply = self.supply
-        pumped = 0 <= self._pumped_us and self.now_us - self._pumped_us < self._pump_hold_us
-        on = self.powered and self.lid.wired and (pumped or supply.fault.always_enabled or supply.fault.stuck_V is not None)
+        pumped = self._pumped_us >= 0 and self.now_us - self._pumped_us < self._pump_hold_us
+        on = (
+            self.powered
+            and self.lid.wired
+            and (pumped or supply.fault.always_enabled or supply.fault.stuck_V is not None)
+        )
         if on != supply.on:
             supply.on = on
             self.supply_switched(on)
@@ -201,9 +218,16 @@ class World(BenchModel):
     # -- keeping
 
     def snapshot(self) -> dict[str, Any]:
-        """Everything that changes, JSON-able; `restore` on a World of the same scenario and seed goes on with the same codes."""
+        """Everything that changes, JSON-able; `restore` on a World of the same scenario and seed goes on
+        with the same codes."""
         own = [self._outputs, self._pumped_us, self._fed_us, self._hv, self._reset]
-        return {"seed": self.seed, "own": own, "codes": list(self.codes), "inputs": self.inputs, **self.model_state()}
+        return {
+            "seed": self.seed,
+            "own": own,
+            "codes": list(self.codes),
+            "inputs": self.inputs,
+            **self.model_state(),
+        }
 
     def restore(self, kept: dict[str, Any]) -> None:
         """Take up a snapshot."""
