@@ -99,6 +99,11 @@ def test_the_noise_table_is_normal_enough():
     assert table[:2] == pytest.approx([1.143694314764077, 1.2565376142081441], abs=1e-12)  # on every machine
 
 
+def test_damp_clips_leak():
+    assert front_end.values(IDEAL).fixture_ohm == pytest.approx(1e12)
+    assert front_end.values(IDEAL, 85.0).fixture_ohm == pytest.approx(1e11)
+
+
 def test_the_chip_s_own_clock_sets_its_window():
     errors = front_end.errors(1, {"ideal": True, "rate_error": (0.1, -0.1)})
     assert front_end.windows_s(errors) == pytest.approx((1 / 275, 1 / 225))

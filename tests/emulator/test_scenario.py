@@ -136,5 +136,6 @@ def test_every_kind_of_fault_has_its_deed():
 def test_the_kinds_that_scripts_rely_on_are_all_there():
     promised = """lid_open stop_pressed lid_switch_stuck lock_fails charge_relay_welded bleed_open
     bleed_welded shunt_relay_stuck divider_open detector_stuck converter_silent supply_overvoltage
-    supply_stuck_on enable_stuck part_shorts part_opens controller_hung controller_reset link_silent over_temperature"""
+    supply_stuck_on enable_stuck part_shorts part_opens controller_hung controller_reset link_silent
+    over_temperature"""
     assert set(promised.split()) <= set(KINDS)

@@ -31,7 +31,7 @@ class Hardware:
         self.errors = front_end.errors(seed, scenario.front_end)
         self.chance = Dice(seed, "chance")
         self.part = Fitted(EMPTY)
-        self._box_values = front_end.values(self.errors)
+        self._box_values = front_end.values(self.errors, scenario.humidity_percent)
         self._make_hardware(seed)
         self._make_overrides()
 
