@@ -14,11 +14,10 @@ from dwellbench.emulator.scenario import Scenario
 
 SEED = 11
 PARTS = {
-    "film by ramp": ('capacitance_F = 47e-9\nleakage_ohm = 2e10\nabsorption = [[0.3, 1e-3], [3.0, 1e-3]]\n', 400.0),
-    "paper by step": ('capacitance_F = 0.47e-6\nleakage_ohm = 5e8\nabsorption = [[0.3, 5e-3], [3.0, 5e-3]]\n', 250.0),
-    "superlinear": (
-        'capacitance_F = 0.1e-6\nsuperlinear = {at_V = 300.0, ohm_there = 2.7e8, exponent = 6.0}\n', 350.0),
-}  # fmt: skip
+    "film by ramp": ("leakage_ohm = 2e10\nabsorption = [[0.3, 1e-3], [3.0, 1e-3]]", 47e-9, 400.0),
+    "paper by step": ("leakage_ohm = 5e8\nabsorption = [[0.3, 5e-3], [3.0, 5e-3]]", 0.47e-6, 250.0),
+    "superlinear": ("superlinear = {at_V = 300.0, ohm_there = 2.7e8, exponent = 6.0}", 0.1e-6, 350.0),
+}
 STAGE, SHUNT, RANGE, NV, SV, NI, SI, FLAGS, VRANGE = 2, 3, 4, 5, 6, 9, 10, 16, 17
 
 
@@ -74,8 +73,8 @@ def readings(rows: list[list[int]], calibration: dict) -> tuple[list[float], lis
 
 @pytest.mark.parametrize("name", PARTS)
 def test_firmware_driven_runs_agree(name):
-    text, volts = PARTS[name]
-    scenario = Scenario.parse("[[part]]\n" + text)
+    text, farad, volts = PARTS[name]
+    scenario = Scenario.parse(f"[[part]]\ncapacitance_F = {farad}\n{text}\n")
     rows, end = firmware_rows(scenario, volts, 12.0)
     assert end == "complete"
     direct = record(scenario.parts[0], volts, 1.0, SEED)

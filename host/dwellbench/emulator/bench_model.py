@@ -20,6 +20,9 @@ from dwellbench.emulator.trouble import ACTS
 from dwellbench.emulator.truth import Harm, Truth
 
 PERIOD_US = 5000
+_REACH_US = (
+    100_000  # a hand moves at 2 m/s (ISO 13855, from memory), and the part lies 0.2 m behind the lid's edge
+)
 _DRIFT_TICKS = 10
 _PLAIN = (
     # what changes and is plain data
@@ -46,6 +49,7 @@ _PLAIN = (
     "_danger_known",
     "_foreign_part",
     "_why",
+    "_reach_us",
     "_tick_us",
     "_ticks",
     "_flaw_us",
@@ -64,7 +68,7 @@ class BenchModel(Hardware):
         self.runs = 0
         self._run_open = False
         self.harms: list[Harm] = []
-        self._danger_known, self._why = False, ""
+        self._danger_known, self._why, self._reach_us = False, "", 0
         self._foreign_part = (
             False  # the part came in after the lid was opened: its charge is not the box's doing
         )
@@ -203,13 +207,14 @@ class BenchModel(Hardware):
         self._why = why
         self._danger_known = False
         self._foreign_part = False
+        self._reach_us = self.now_us + _REACH_US
         if not opened:
             self._run_open = False
         self.find_next()
 
     def watch_hands(self) -> None:
         """Called while the lid is open: note danger once an opening."""
-        if self._danger_known:
+        if self._danger_known or self.now_us < self._reach_us:
             return
         high, plate = abs(self.circuit.high_mean), 0.0
         if not self._foreign_part:
