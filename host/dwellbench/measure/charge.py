@@ -1,0 +1,163 @@
+"""Capacitance from the charge that flowed: the primary result, since it needs neither the charge resistor nor
+a model.
+
+C = (charge through the shunt - what leaked meanwhile) / (change of the voltage across the part), over the
+longest stretch of charging read without a break on one shunt. Means of windows are compared with means of
+windows: the charge that had flowed by the middle of a window is S + i dt/2 - (di/dt) dt^2/12, S being the sum
+before it, so no voltage has to be guessed at the edge of a window.
+
+How much leaks while the voltage rises is known least: a forming electrolytic leaks most at the end of its
+charging, and what is absorbed looks like leakage. So the sum may be cut before the charge is in, where the
+voltage still moves far and little has leaked; of several cuts the one with the least doubt is taken.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from math import hypot
+
+import numpy as np
+
+from dwellbench.measure.estimate import Estimate
+from dwellbench.measure.reference import FIXTURE_U_F
+from dwellbench.measure.trace import Bools, Circuit, Floats, Trace
+
+_LOW_SHUNT_OHM = 10e3  # below this the node follows within a window whatever the part
+_CUTS = (0.5, 0.63, 0.8, 0.9, 0.95, 0.99)
+_IN = 0.999  # of the rise: the charge is in, and noise only grows after it
+_LEAST_RISE_V = 2.0
+_LEAST_ROWS = 3
+_STEADY_ROWS = 5
+_SMOOTH_ROWS = 10  # windows in a time constant from which on slopes between windows can be trusted
+
+
+@dataclass(frozen=True)
+class Stretch:
+    """Charging read without a break on one shunt: row numbers `first` to `last`, both included."""
+
+    first: int
+    last: int
+
+
+def counted(trace: Trace) -> Bools:
+    """Rows whose current counts as charge: readable, and settled unless the shunt is low enough to follow at
+    once.
+    """
+    follows = trace.shunt_ohm < _LOW_SHUNT_OHM
+    return np.asarray(trace.rows("charge", "dwell") & trace.readable & (follows | ~trace.unsettled))
+
+
+def stretch_of(trace: Trace) -> Stretch | None:
+    """The stretch with the greatest rise of voltage that begins in the charge; None when there is none."""
+    usable = counted(trace)
+    broken = trace.gap | (np.diff(trace.shunt_ohm, prepend=trace.shunt_ohm[:1]) != 0.0)
+    begins = usable & (np.concatenate(([True], ~usable[:-1])) | broken)
+    ends = usable & np.concatenate((begins[1:] | ~usable[1:], [True]))
+    charge, volts = trace.rows("charge"), trace.across_V
+    best: Stretch | None = None
+    best_V = _LEAST_RISE_V
+    for first, last in zip(np.flatnonzero(begins), np.flatnonzero(ends), strict=True):
+        rise_V = float(volts[last] - volts[first])
+        if charge[first] and rise_V > best_V and last - first + 1 >= _LEAST_ROWS:
+            best, best_V = Stretch(int(first), int(last)), rise_V
+    return best
+
+
+def charge_balance(
+    trace: Trace, circuit: Circuit, stretch: Stretch | None, leak_S: float | None = None
+) -> Estimate | None:
+    """Capacitance in farads, less the empty fixture's; None when no charging can be read.
+
+    `leak_S` is the conductance of the part at the end of the dwell, where that is known.
+    """
+    if stretch is None:
+        return None
+    balance = _Balance(trace, stretch)
+    siemens, doubt_S = balance.leak(leak_S)
+    cuts = balance.cuts()
+    own = [hypot(balance.u_noise_F(cut), doubt_S * balance.per_volt_s(cut)) for cut in cuts]
+    best = int(np.argmin(own))
+    farads = balance.farads(cuts[best], siemens)
+    u_shared = abs(farads) * hypot(circuit.u_gain_i, circuit.u_gain_v)
+    return Estimate(farads - circuit.fixture_F, hypot(own[best], FIXTURE_U_F), u_shared, cuts[best] + 1)
+
+
+class _Balance:
+    """Charge, voltage and their integrals over one stretch. Cuts are row numbers within the stretch."""
+
+    def __init__(self, trace: Trace, stretch: Stretch) -> None:
+        rows = slice(stretch.first, stretch.last + 1)
+        self.dt = trace.interval_s[rows]
+        self.t = trace.t_s[rows] - 0.5 * self.dt
+        self.amps = trace.i_shunt_A[rows]
+        self.volts = trace.across_V[rows]
+        self.charge = _running(self.amps, self.dt, self.t)
+        self.area = _running(self.volts, self.dt, self.t)
+        self.u_offset_A = float(trace.u_offset_A[rows].max())
+        self.code_A = float(trace.range_V[stretch.first] / 32768.0 / trace.shunt_ohm[stretch.first])
+        self.full = min(max(self._reaches(_IN) + 1, 2), len(self.t) - 1)
+        self.smooth = self._reaches(0.63) - self._reaches(0.05) >= _SMOOTH_ROWS
+
+    def _reaches(self, share: float) -> int:
+        return int(np.argmax(self.volts >= self.volts[0] + share * (self.volts[-1] - self.volts[0])))
+
+    def cuts(self) -> list[int]:
+        """Where the sum may end: when the charge is in, or earlier in a record that is smooth."""
+        early = [self._reaches(share) for share in _CUTS] if self.smooth else []
+        return [*early, self.full]
+
+    def farads(self, cut: int, siemens: float) -> float:
+        """Capacitance when so much leaks."""
+        charge = self.charge[cut] - self.charge[0] - siemens * (self.area[cut] - self.area[0])
+        return float(charge / (self.volts[cut] - self.volts[0]))
+
+    def per_volt_s(self, cut: int) -> float:
+        """Farads for each siemens of leakage: volt-seconds over volts."""
+        return float((self.area[cut] - self.area[0]) / (self.volts[cut] - self.volts[0]))
+
+    def u_noise_F(self, cut: int) -> float:
+        """Noise of the sum (a code a window at worst), and the zero's doubt over its whole time."""
+        dt = self.dt[: cut + 1]
+        noise = self.code_A * float(np.sqrt(np.sum(dt**2)))
+        return float(np.hypot(noise, self.u_offset_A * dt.sum()) / (self.volts[cut] - self.volts[0]))
+
+    def leak(self, leak_S: float | None) -> tuple[float, float]:
+        """Conductance while charging, and its doubt, siemens: between that at the end of charge and that of
+        the dwell.
+        """
+        now_S = self._late_S()
+        known = [siemens for siemens in (leak_S, now_S) if siemens is not None]
+        if not known:
+            return 0.0, max(float(self.amps[-1] / self.volts[-1]), 0.0)
+        mean = sum(known) / len(known)
+        doubt = abs(known[0] - known[-1]) / 2.0 if len(known) == 2 else 0.1 * abs(mean)
+        return mean, doubt
+
+    def _late_S(self) -> float | None:
+        """Conductance at the end of the charge: current less C dV/dt over voltage, C found on the way."""
+        first = self.full + 1
+        if len(self.t) - first < _STEADY_ROWS:
+            if not self.smooth:
+                return None
+            first = len(self.t) - _STEADY_ROWS
+        late = slice(first, min(first + 4 * _STEADY_ROWS, len(self.t)))
+        t, volts, amps = self.t[late], self.volts[late], self.amps[late]
+        slope = float(np.polynomial.polynomial.polyfit(t - t[0], volts, 1)[1])
+        siemens = 0.0
+        for _ in range(4):
+            siemens = float(np.mean(amps) - self.farads(self.full, siemens) * slope) / float(np.mean(volts))
+        return siemens
+
+
+def _running(values: Floats, dt: Floats, t: Floats) -> Floats:
+    """The integral of `values` since the beginning, averaged over each window."""
+    before = np.concatenate(([0.0], np.cumsum(values * dt)[:-1]))
+    return np.asarray(before + values * dt / 2.0 - _slope(values, t) * dt**2 / 12.0)
+
+
+def _slope(values: Floats, t: Floats) -> Floats:
+    """Slope in each window: the lesser of the two beside it, none where they differ in sign."""
+    steps = np.diff(values) / np.diff(t)
+    left, right = np.concatenate(([0.0], steps)), np.concatenate((steps, [0.0]))
+    lesser = np.sign(left) * np.minimum(np.abs(left), np.abs(right))
+    return np.asarray(np.where(left * right > 0.0, lesser, 0.0))

@@ -1,0 +1,207 @@
+"""What flows at the end of the dwell: the conventional total, and the interval in which conduction must lie.
+
+The total is the shunt current at the stated time. Of it, C dV/dt belongs to a drifting supply and V /
+R_fixture to the empty clips. What is still absorbed then cannot be told from conduction by its value, only by
+its slope: on a decay t^-n the absorption is about t |di/dt| (n = 1), and never more than t |di/dt| / 0.6. So
+conduction lies between i - t |di/dt| / 0.6 and i; its standard uncertainty takes half the absorption, the
+doubt of C dV/dt and of the zero, and the noise. A shape fitted through the decay would promise a hundred
+times more and be wrong by as much as the absorption itself.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from math import hypot, sqrt
+
+import numpy as np
+from numpy.typing import NDArray
+
+from dwellbench.measure.least_squares import Line, line
+from dwellbench.measure.settled import Settled
+from dwellbench.measure.trace import Bools, Circuit, Floats, Trace
+
+LEAST_EXPONENT = 0.6
+_ABSORPTION_U = 0.5
+_LEAST_ROWS = 5
+_SHARE = 0.1  # of the time at voltage: the last tenth is read
+_WINDOW_S = (1.0, 10.0)
+_SLOPE_FROM = 0.5  # the slope is taken over the last half of the dwell
+_DRIFT_V_PER_S = 1e-4  # of the warm supply: what C dV/dt may hide below the voltage's own noise
+_LOUD = 6.0  # deviations of a row from its neighbours' median above which it is a burst, not noise
+
+
+@dataclass(frozen=True)
+class Leakage:
+    """At `time_s` after the voltage was in. Amperes, volts; `u_read_A` noise and zero, without gain or
+    absorption.
+
+    `charging_A` is C dV/dt, `fixture_A` the clips' share, `absorbed_A` t |di/dt| of the decay (0 when it does
+    not fall).
+    """
+
+    time_s: float
+    volts_V: float
+    total_A: float
+    u_read_A: float
+    charging_A: float
+    u_charging_A: float
+    fixture_A: float
+    u_fixture_A: float
+    absorbed_A: float
+    u_absorbed_A: float
+    slope_per_s: float  # relative change of the current per second at the end
+    shunt_ohm: float
+    rows: int
+
+    @property
+    def through_A(self) -> float:
+        """What flows through the part itself at that time: conduction and absorption."""
+        return self.total_A - self.charging_A - self.fixture_A
+
+    @property
+    def u_through_A(self) -> float:
+        """Standard uncertainty of `through_A`, gains left out."""
+        return sqrt(self.u_read_A**2 + self.u_charging_A**2 + self.u_fixture_A**2)
+
+    @property
+    def conduction_A(self) -> float:
+        """Best single figure for conduction alone."""
+        return self.through_A - self.absorbed_A
+
+    @property
+    def u_conduction_A(self) -> float:
+        """u^2 = noise^2 + zero^2 + (half the absorption)^2 + (C drift)^2 + (fixture)^2."""
+        return hypot(self.u_through_A, hypot(_ABSORPTION_U * self.absorbed_A, self.u_absorbed_A))
+
+    @property
+    def least_A(self) -> float:
+        """Lower end of the interval for conduction, before measurement doubt."""
+        return self.through_A - self.absorbed_A / LEAST_EXPONENT
+
+
+def dwell_begin_s(trace: Trace) -> float | None:
+    """The time at which the voltage was in: the beginning of the dwell's first row."""
+    dwell = np.flatnonzero(trace.rows("dwell"))
+    return float(trace.t_s[dwell[0]] - trace.interval_s[dwell[0]]) if dwell.size else None
+
+
+def read_leakage(
+    trace: Trace, circuit: Circuit, settled: Settled, capacitance_F: float | None, at_s: float | None = None
+) -> Leakage | None:
+    """Read the current at `at_s` after the voltage was in (the end of the dwell if None); None without
+    settled rows there.
+    """
+    begin_s = dwell_begin_s(trace)
+    if begin_s is None:
+        return None
+    until_s = float(trace.t_s[settled.dwell][-1]) - begin_s if at_s is None else at_s
+    window_s = min(max(_SHARE * until_s, _WINDOW_S[0]), _WINDOW_S[1])
+    since_s = trace.t_s - begin_s
+    rows = settled.readings & (since_s > until_s - window_s - 1e-9) & (since_s <= until_s + 1e-6)
+    rows &= trace.shunt_ohm == (trace.shunt_ohm[rows][-1] if rows.any() else 0.0)
+    if int(rows.sum()) < _LEAST_ROWS or float(since_s[rows][-1]) < until_s - 0.5 * window_s:
+        return None
+    return _read(trace, circuit, settled, capacitance_F, rows, since_s, until_s)
+
+
+def _read(
+    trace: Trace,
+    circuit: Circuit,
+    settled: Settled,
+    capacitance_F: float | None,
+    rows: Bools,
+    since_s: Floats,
+    until_s: float,
+) -> Leakage:
+    middle_s = since_s - 0.5 * trace.interval_s
+    quiet = rows & ~bursts(trace.i_shunt_A, rows)
+    current = line(middle_s[quiet], trace.i_shunt_A[quiet], until_s)
+    across = line(middle_s[quiet], trace.across_V[quiet], until_s)
+    volts_V = across.at
+    charging_A, u_charging_A = _charging(trace, settled, middle_s, until_s, capacitance_F or 0.0)
+    fixture_A = volts_V / circuit.fixture_ohm
+    absorbed_A, u_absorbed_A = _absorbed(trace, settled, middle_s, until_s, charging_A)
+    offset_A = float(trace.u_offset_A[quiet].max())
+    return Leakage(
+        time_s=until_s,
+        volts_V=volts_V,
+        total_A=current.at,
+        u_read_A=hypot(max(current.u_at, current.s / sqrt(float(quiet.sum()))), offset_A),
+        charging_A=charging_A,
+        u_charging_A=u_charging_A,
+        fixture_A=fixture_A,
+        u_fixture_A=fixture_A * circuit.u_fixture_rel,
+        absorbed_A=absorbed_A,
+        u_absorbed_A=u_absorbed_A,
+        slope_per_s=current.slope / current.at if current.at else 0.0,
+        shunt_ohm=float(trace.shunt_ohm[quiet][-1]),
+        rows=int(quiet.sum()),
+    )
+
+
+def bursts(amps: Floats, rows: Bools) -> Bools:
+    """Rows that stand out from the run of the others by far more than these scatter (median, robust). Shape
+    of `rows`.
+    """
+    at = np.flatnonzero(rows)
+    out = np.zeros(rows.size, dtype=bool)
+    if at.size < _LEAST_ROWS:
+        return out
+    values = amps[at]
+    flat = values - np.polynomial.polynomial.polyval(at - at[0], _robust_line(at - at[0], values))
+    spread = 1.4826 * float(np.median(np.abs(flat - np.median(flat))))
+    loud = np.abs(flat - np.median(flat)) > _LOUD * max(spread, 1e-15)
+    if 2 * int(loud.sum()) < at.size and at.size - int(loud.sum()) >= 3:
+        out[at[loud]] = True
+    return out
+
+
+def _robust_line(x: NDArray[np.int64], y: Floats) -> tuple[float, float]:
+    """Slope as the median between the two halves' rows, intercept as the median of what is left."""
+    half = x.size // 2
+    slope = float(np.median((y[-half:] - y[:half]) / (x[-half:] - x[:half])))
+    return float(np.median(y - slope * x)), slope
+
+
+def _late(trace: Trace, settled: Settled, middle_s: Floats, until_s: float) -> Bools:
+    """Settled rows of the last half of the time at voltage, on the shunt of the end."""
+    rows = settled.readings & (middle_s >= _SLOPE_FROM * until_s) & (middle_s <= until_s)
+    return np.asarray(
+        rows & (trace.shunt_ohm == trace.shunt_ohm[rows][-1]) & (trace.range_V == trace.range_V[rows][-1])
+    )
+
+
+def _charging(
+    trace: Trace, settled: Settled, middle_s: Floats, until_s: float, capacitance_F: float
+) -> tuple[float, float]:
+    """C dV/dt at the end and its doubt: taken off only where the voltage's slope stands out of its noise."""
+    rows = _late(trace, settled, middle_s, until_s)
+    if int(rows.sum()) < _LEAST_ROWS:
+        return 0.0, capacitance_F * _DRIFT_V_PER_S
+    slope = line(middle_s[rows], trace.across_V[rows], until_s)
+    bent = _bent(middle_s[rows], trace.across_V[rows], until_s)
+    u_slope = hypot(slope.u_slope, abs(bent - slope.slope) / 2.0)
+    if abs(slope.slope) < 2.0 * u_slope:
+        return 0.0, capacitance_F * min(hypot(abs(slope.slope), u_slope), 10.0 * _DRIFT_V_PER_S)
+    return capacitance_F * bent, capacitance_F * u_slope
+
+
+def _bent(x: Floats, y: Floats, at: float) -> float:
+    """Slope at the end of a parabola: what a voltage that still approaches its end has left."""
+    if x.size < 2 * _LEAST_ROWS:
+        return line(x, y, at).slope
+    return float(np.polynomial.polynomial.polyfit(x - at, y, 2)[1])
+
+
+def _absorbed(
+    trace: Trace, settled: Settled, middle_s: Floats, until_s: float, charging_A: float
+) -> tuple[float, float]:
+    """t |di/dt| at the end from the slope against ln t over the last half, and its standard uncertainty; 0 if
+    it rises.
+    """
+    rows = _late(trace, settled, middle_s, until_s)
+    if int(rows.sum()) < _LEAST_ROWS:
+        return 0.0, abs(float(trace.i_shunt_A[settled.readings][-1]))
+    rows &= ~bursts(trace.i_shunt_A, rows)
+    decay: Line = line(np.log(middle_s[rows] / until_s), trace.i_shunt_A[rows])
+    return max(-decay.slope, 0.0), decay.u_slope
