@@ -34,7 +34,7 @@ def test_eigenvalues_and_vectors_rebuild_the_matrix(n):
 
 
 def test_small_eigenvalues_keep_their_digits_beside_huge_ones():
-    # D A D with A well conditioned, D graded over eight decades: the least eigenvalue is known from the inverse
+    # D A D, A well conditioned, D graded over eight decades: the least eigenvalue is known from the inverse
     core = np.array([[2.0, 0.5, 0.3], [0.5, 1.0, 0.2], [0.3, 0.2, 1.5]])
     d = np.diag([1e4, 1.0, 1e-4])
     values, _ = eigen_symmetric((d @ core @ d).tolist())

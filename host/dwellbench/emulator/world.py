@@ -75,7 +75,7 @@ class World(BenchModel):
         `codes` then holds what those conversions give (mean over the chip's own 4 ms of this period).
         KeyError for a channel that the converter does not have.
         """
-        now = self.now_us
+        now = self.now_us  # one long function: this is the path of every period, and calls cost
         supply, circuit = self.supply, self.circuit
         if outputs != self._outputs:
             self._drive(outputs)
