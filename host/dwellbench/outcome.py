@@ -10,13 +10,13 @@ from __future__ import annotations
 from dataclasses import dataclass, field, replace
 from typing import Any
 
+from dwellbench.limits.decide import FIT, UNDECIDED, UNFIT, VERDICTS
 from dwellbench.part import Part
 from dwellbench.quantity import Quantity
 
 SCHEMA = 1
 
-FIT, UNFIT, UNDECIDED = "fit", "unfit", "undecided"
-VERDICTS = (FIT, UNFIT, UNDECIDED)
+__all__ = ["FIT", "UNDECIDED", "UNFIT", "VERDICTS", "Finding", "LimitResult", "Outcome", "Suit"]
 
 NEXTS = ("use", "use_up_to", "re_form_then_test", "clean_and_retest", "check_esr", "other_place", "scrap")
 """What to do next; `undecided` may have none of them (null), then `to_decide` says what is needed."""

@@ -28,6 +28,8 @@ _IN = 0.999  # of the rise: the charge is in, and noise only grows after it
 _LEAST_RISE_V = 2.0
 _LEAST_ROWS = 3
 _STEADY_ROWS = 5
+_LOW_V = (15.0, 55.0)
+_LOW_RISE_V = 10.0
 _SMOOTH_ROWS = 10  # windows in a time constant from which on slopes between windows can be trusted
 
 
@@ -61,6 +63,19 @@ def stretch_of(trace: Trace) -> Stretch | None:
         if charge[first] and rise_V > best_V and last - first + 1 >= _LEAST_ROWS:
             best, best_V = Stretch(int(first), int(last)), rise_V
     return best
+
+
+def low_volts(trace: Trace, stretch: Stretch | None) -> Stretch | None:
+    """The part of a stretch between 15 and 55 V, where class II ceramic still has the value of its marking;
+    None if the charging went through it too fast to see.
+    """
+    if stretch is None:
+        return None
+    volts = trace.across_V[stretch.first : stretch.last + 1]
+    rows = np.flatnonzero((volts >= _LOW_V[0]) & (volts <= _LOW_V[1]))
+    if rows.size < 2 or volts[rows[-1]] - volts[rows[0]] < _LOW_RISE_V or rows[-1] - rows[0] != rows.size - 1:
+        return None
+    return Stretch(stretch.first + int(rows[0]), stretch.first + int(rows[-1]))
 
 
 def charge_balance(

@@ -1,0 +1,33 @@
+"""Numbers as people at a bench say them: three figures, a prefix, the unit."""
+
+from __future__ import annotations
+
+from math import floor, log10
+
+_PREFIXES = {-15: "f", -12: "p", -9: "n", -6: "u", -3: "m", 0: "", 3: "k", 6: "M", 9: "G", 12: "T", 15: "P"}
+
+
+def si(value: float | None, unit: str, figures: int = 3) -> str:
+    """`si(3.01e10, "ohm")` is "30.1 Gohm"; None is "unknown"."""
+    if value is None:
+        return "unknown"
+    if value == 0.0:
+        return f"0 {unit}"
+    step = min(max(3 * floor(log10(abs(value) * (1 + 1e-12)) / 3), -15), 15)
+    number = f"{value / 10.0**step:.{figures}g}"
+    if abs(float(number)) >= 1000.0 and step < 15:  # rounding carried it into the next prefix
+        step += 3
+        number = f"{value / 10.0**step:.{figures}g}"
+    if "e" in number:
+        number = f"{float(number):.0f}"
+    return f"{number} {_PREFIXES[step]}{unit}"
+
+
+def volts(value: float | None) -> str:
+    """Volts without a prefix: 628 V, 4.7 V."""
+    return "unknown" if value is None else f"{value:.3g} V" if abs(value) < 1000.0 else f"{value:.0f} V"
+
+
+def seconds(value: float) -> str:
+    """Seconds, minutes above two of them."""
+    return f"{value:.3g} s" if value < 120.0 else f"{value / 60.0:.3g} min"
