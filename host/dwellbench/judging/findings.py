@@ -8,7 +8,6 @@ interrupted, fault.
 from __future__ import annotations
 
 from collections.abc import Callable
-from math import hypot
 
 import numpy as np
 
@@ -128,38 +127,20 @@ def _forming(case: Case) -> Finding | None:
 
 def _superlinear(case: Case) -> Finding | None:
     """Conductance at the test's voltage against that at the 20 V look, where the trace has it."""
-    leak, low = case.leakage, _look(case)
-    if leak is None or low is None or case.part.dielectric in _POLAR or leak.volts_V < 3.0 * low[2]:
+    leak, low = case.leakage, case.estimates.low_leak
+    if leak is None or low is None or case.part.dielectric in _POLAR or leak.volts_V < 3.0 * low.volts_V:
         return None
     high_S, u_high_S = leak.through_A / leak.volts_V, leak.u_through_A / leak.volts_V
-    least, most = high_S - COVERAGE_95 * u_high_S, low[0] + COVERAGE_95 * low[1]
+    least, most = high_S - COVERAGE_95 * u_high_S, low.siemens + COVERAGE_95 * low.u_S
     if least <= _SUPERLINEAR * max(most, 0.0) or least <= 0.0:
         return None
     shown_low = si(1.0 / max(most, 1e-15), "ohm")
     evidence = (
-        f"At {volts(leak.volts_V)} it insulates {si(1.0 / high_S, 'ohm')}, at {volts(low[2])} more than "
+        f"At {volts(leak.volts_V)} it insulates {si(1.0 / high_S, 'ohm')}, at {volts(low.volts_V)} more than "
         f"{shown_low}: "
         "the leak rises faster than the voltage."
     )
     return Finding("superlinear", evidence)
-
-
-def _look(case: Case) -> tuple[float, float, float] | None:
-    """Conductance, its uncertainty (siemens) and the voltage of the last settled rows of the look."""
-    trace = case.trace
-    rows = np.flatnonzero(trace.rows("look") & trace.readable & ~trace.unsettled & (trace.v_part_V > 5.0))[
-        -3:
-    ]
-    if rows.size < 3:
-        return None
-    across_V = float(np.mean(trace.across_V[rows]))
-    slope = float(np.polynomial.polynomial.polyfit(trace.t_s[rows], trace.across_V[rows], 1)[1])
-    farads = case.estimates.capacitance.value if case.estimates.capacitance else 0.0
-    charging_A = farads * slope
-    amps = float(np.mean(trace.i_shunt_A[rows])) - charging_A
-    u_A = hypot(float(trace.u_offset_A[rows].max()), abs(charging_A))
-    spread_A = float(np.ptp(trace.i_shunt_A[rows])) / 2.0
-    return amps / across_V, hypot(u_A, spread_A) / across_V, across_V
 
 
 def _disagree(case: Case) -> Finding | None:

@@ -6,9 +6,10 @@ longest stretch of charging read without a break on one shunt. Means of windows 
 windows: the charge that had flowed by the middle of a window is S + i dt/2 - (di/dt) dt^2/12, S being the sum
 before it, so no voltage has to be guessed at the edge of a window.
 
-How much leaks while the voltage rises is known least: a forming electrolytic leaks most at the end of its
-charging, and what is absorbed looks like leakage. So the sum may be cut before the charge is in, where the
-voltage still moves far and little has leaked; of several cuts the one with the least doubt is taken.
+How much leaks while the voltage rises is known least: a leak may rise faster than the voltage, a forming
+electrolytic leaks most at the end of its charging, and what is absorbed looks like leakage. So the sum may be
+cut before the charge is in, where little has leaked yet. Of several cuts the one with the least doubt is
+taken; how far they differ is part of their doubt.
 """
 
 from __future__ import annotations
@@ -23,11 +24,13 @@ from dwellbench.measure.reference import FIXTURE_U_F
 from dwellbench.measure.trace import Bools, Circuit, Floats, Trace
 
 _LOW_SHUNT_OHM = 10e3  # below this the node follows within a window whatever the part
-_CUTS = (0.5, 0.63, 0.8, 0.9, 0.95, 0.99)
+_CUTS = (0.1, 0.2, 0.3, 0.5, 0.63, 0.8, 0.9, 0.95, 0.99)
 _IN = 0.999  # of the rise: the charge is in, and noise only grows after it
 _LEAST_RISE_V = 2.0
 _LEAST_ROWS = 3
 _STEADY_ROWS = 5
+_EARLIEST_ROW = 5
+_LEAK_U = 0.003  # what a leak that is read twice alike may still have been in between
 _LOW_V = (15.0, 55.0)
 _LOW_RISE_V = 10.0
 _SMOOTH_ROWS = 10  # windows in a time constant from which on slopes between windows can be trusted
@@ -39,6 +42,25 @@ class Stretch:
 
     first: int
     last: int
+
+
+@dataclass(frozen=True)
+class Leaks:
+    """Conductances in siemens while the voltage rises: at its beginning (the look, else the dwell) and at its
+    end.
+    """
+
+    first_S: float | None
+    last_S: float | None
+
+    def at(self, share: float) -> tuple[float, float]:
+        """Conductance and its doubt up to a share of the voltage: a leak grows at least in proportion to the
+        voltage, or not at all.
+        """
+        last_S = self.last_S or 0.0
+        first_S = last_S if self.first_S is None else self.first_S
+        half = (last_S - first_S) * share / 2.0
+        return first_S + half, hypot(half, _LEAK_U * first_S)
 
 
 def counted(trace: Trace) -> Bools:
@@ -79,22 +101,26 @@ def low_volts(trace: Trace, stretch: Stretch | None) -> Stretch | None:
 
 
 def charge_balance(
-    trace: Trace, circuit: Circuit, stretch: Stretch | None, leak_S: float | None = None
+    trace: Trace, circuit: Circuit, stretch: Stretch | None, leaks: Leaks | None = None
 ) -> Estimate | None:
-    """Capacitance in farads, less the empty fixture's; None when no charging can be read.
-
-    `leak_S` is the conductance of the part at the end of the dwell, where that is known.
-    """
+    """Capacitance in farads, less the empty fixture's; None when no charging can be read."""
     if stretch is None:
         return None
     balance = _Balance(trace, stretch)
-    siemens, doubt_S = balance.leak(leak_S)
+    leaks = balance.with_late(leaks or Leaks(None, None))
     cuts = balance.cuts()
-    own = [hypot(balance.u_noise_F(cut), doubt_S * balance.per_volt_s(cut)) for cut in cuts]
+    found = [balance.farads(cut, leaks.at(balance.share(cut))[0]) for cut in cuts]
+    own = [
+        hypot(
+            balance.u_noise_F(cut),
+            leaks.at(balance.share(cut))[1] * balance.per_volt_s(cut),
+            (farads - found[0]) / 2.0,
+        )
+        for cut, farads in zip(cuts, found, strict=True)
+    ]
     best = int(np.argmin(own))
-    farads = balance.farads(cuts[best], siemens)
-    u_shared = abs(farads) * hypot(circuit.u_gain_i, circuit.u_gain_v)
-    return Estimate(farads - circuit.fixture_F, hypot(own[best], FIXTURE_U_F), u_shared, cuts[best] + 1)
+    u_shared = abs(found[best]) * hypot(circuit.u_gain_i, circuit.u_gain_v)
+    return Estimate(found[best] - circuit.fixture_F, hypot(own[best], FIXTURE_U_F), u_shared, cuts[best] + 1)
 
 
 class _Balance:
@@ -119,7 +145,7 @@ class _Balance:
     def cuts(self) -> list[int]:
         """Where the sum may end: when the charge is in, or earlier in a record that is smooth."""
         early = [self._reaches(share) for share in _CUTS] if self.smooth else []
-        return [*early, self.full]
+        return [*(cut for cut in early if cut >= _EARLIEST_ROW), self.full]
 
     def farads(self, cut: int, siemens: float) -> float:
         """Capacitance when so much leaks."""
@@ -136,17 +162,18 @@ class _Balance:
         noise = self.code_A * float(np.sqrt(np.sum(dt**2)))
         return float(np.hypot(noise, self.u_offset_A * dt.sum()) / (self.volts[cut] - self.volts[0]))
 
-    def leak(self, leak_S: float | None) -> tuple[float, float]:
-        """Conductance while charging, and its doubt, siemens: between that at the end of charge and that of
-        the dwell.
-        """
-        now_S = self._late_S()
-        known = [siemens for siemens in (leak_S, now_S) if siemens is not None]
-        if not known:
-            return 0.0, max(float(self.amps[-1] / self.volts[-1]), 0.0)
-        mean = sum(known) / len(known)
-        doubt = abs(known[0] - known[-1]) / 2.0 if len(known) == 2 else 0.1 * abs(mean)
-        return mean, doubt
+    def share(self, cut: int) -> float:
+        """Voltage at the cut as a share of that at the end."""
+        return float(self.volts[cut] / self.volts[-1])
+
+    def with_late(self, leaks: Leaks) -> Leaks:
+        """The leaks known from elsewhere, and the one at the end of this charge."""
+        late_S = self._late_S()
+        if late_S is not None:
+            return Leaks(leaks.first_S if leaks.first_S is not None else leaks.last_S, late_S)
+        if leaks.last_S is None:
+            return Leaks(0.0, max(float(self.amps[-1] / self.volts[-1]), 0.0))
+        return leaks
 
     def _late_S(self) -> float | None:
         """Conductance at the end of the charge: current less C dV/dt over voltage, C found on the way."""

@@ -9,11 +9,12 @@ from math import hypot, inf
 
 import numpy as np
 
-from dwellbench.measure.charge import Stretch, charge_balance, low_volts, stretch_of
+from dwellbench.measure.charge import Leaks, Stretch, charge_balance, low_volts, stretch_of
 from dwellbench.measure.curve import Curve, fit_curve
 from dwellbench.measure.estimate import Estimate
 from dwellbench.measure.events import Events, events
 from dwellbench.measure.leakage import Leakage, dwell_begin_s, read_leakage
+from dwellbench.measure.look import LowLeak, low_leak
 from dwellbench.measure.ratios import ABSORPTION_S, POLARISATION_S, recovery_percent, resistance_ratio
 from dwellbench.measure.settled import Settled, settled
 from dwellbench.measure.trace import Circuit, Trace, circuit_of
@@ -61,6 +62,7 @@ class Estimates:
     capacitance: Estimate | None
     apart: float | None  # relative difference of curve and balance, when it is a finding
     leakage: Leakage | None
+    low_leak: LowLeak | None
     events: Events
     dwell_s: float | None
     absorption_ratio: Quantity | None
@@ -135,16 +137,17 @@ def estimate(trace: Trace, expect_F: float | None = None, dielectric: str | None
     """
     circuit = circuit_of(trace)
     stretch = stretch_of(trace)
-    first = charge_balance(trace, circuit, stretch, None)
+    first = charge_balance(trace, circuit, stretch)
     guess_F = first.value if first is not None and first.value > 0.0 else expect_F
     mask = settled(trace, circuit, guess_F)
     leak = read_leakage(trace, circuit, mask, guess_F)
-    leak_S = leak.through_A / leak.volts_V if leak is not None and leak.volts_V > 1.0 else None
-    balance = charge_balance(trace, circuit, stretch, leak_S)
+    low = low_leak(trace, guess_F)
+    leaks = _leaks(leak, low)
+    balance = charge_balance(trace, circuit, stretch, leaks)
     curve = fit_curve(trace, circuit, stretch, balance.value if balance else None)
     combined, apart = combine(balance, curve)
     if dielectric in CLASS_II:
-        combined = _at_low_volts(trace, circuit, stretch, leak_S) or combined
+        combined = _at_low_volts(trace, circuit, stretch, leaks) or combined
     end_s = _dwell_s(trace)
     value_F = combined.value if combined is not None else None
     volts_V = leak.volts_V if leak is not None else 0.0
@@ -157,12 +160,19 @@ def estimate(trace: Trace, expect_F: float | None = None, dielectric: str | None
         capacitance=_with_absorption(combined, dielectric),
         apart=apart,
         leakage=leak,
+        low_leak=low,
         events=events(trace, mask),
         dwell_s=end_s,
         absorption_ratio=resistance_ratio(trace, circuit, mask, value_F, ABSORPTION_S, end_s or 0.0),
         polarisation_index=resistance_ratio(trace, circuit, mask, value_F, POLARISATION_S, end_s or 0.0),
         recovery_percent=recovery_percent(trace, circuit, value_F, volts_V),
     )
+
+
+def _leaks(leak: Leakage | None, low: LowLeak | None) -> Leaks:
+    """What is known of the leak beside the charging: at the look, and at the end of the dwell."""
+    end_S = leak.through_A / leak.volts_V if leak is not None and leak.volts_V > 1.0 else None
+    return Leaks(None if low is None else low.siemens, end_S)
 
 
 def _dwell_s(trace: Trace) -> float | None:
@@ -189,11 +199,9 @@ def combine(balance: Estimate | None, curve: Curve | None) -> tuple[Estimate | N
     return Estimate(value, float(1.0 / np.sqrt(weights.sum())), balance.u_shared, balance.rows), None
 
 
-def _at_low_volts(
-    trace: Trace, circuit: Circuit, stretch: Stretch | None, leak_S: float | None
-) -> Estimate | None:
+def _at_low_volts(trace: Trace, circuit: Circuit, stretch: Stretch | None, leaks: Leaks) -> Estimate | None:
     """Class II ceramic at 15 to 55 V: from that part of a ramp, else the box's own look at 20 V."""
-    found = charge_balance(trace, circuit, low_volts(trace, stretch), leak_S)
+    found = charge_balance(trace, circuit, low_volts(trace, stretch), leaks)
     if found is not None:
         return found
     look_pF = trace.number("look_pf")

@@ -32,6 +32,7 @@ class RawTrace:
     info: Mapping[str, Any] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
+        """Refuse a table of another width."""
         if self.rows.ndim != 2 or self.rows.shape[1] != len(COLUMNS):
             wrong = f"Sample rows have {len(COLUMNS)} members; these have shape {self.rows.shape}."
             raise TraceError(wrong, remedy="Take the rows as the box sent them.")
@@ -55,4 +56,5 @@ class RawTrace:
         return np.asarray(self.rows[:, COLUMNS.index(name)])
 
     def __len__(self) -> int:
+        """Rows."""
         return int(self.rows.shape[0])

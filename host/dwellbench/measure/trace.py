@@ -58,6 +58,7 @@ class Trace:
     header: Mapping[str, Any] = field(default_factory=dict)
 
     def __len__(self) -> int:
+        """Rows."""
         return int(self.t_s.size)
 
     @property
