@@ -19,7 +19,7 @@ from .codes import FAULT_BOARD, LOCKOUT, OUT_RELEASE
 from .compat import const, ticks_diff
 from .course import Course
 from .front import Front
-from .interlock import HV, PART_LIVE, SILENT, STUCK, UNLOCKED, Conditions, Interlock
+from .interlock import ASTRAY, HV, PART_LIVE, SILENT, STUCK, UNLOCKED, Conditions, Interlock
 from .latch import Latch
 from .proof import Proof
 from .ratings import Ratings
@@ -81,6 +81,8 @@ class Controller:
         self.front.take(now)
         bits = self.conditions.step(self.board.inputs(), self.front, self.supply, now, late)
         self._prepare(bits, now)
+        if self.bench.astray:
+            bits |= ASTRAY
         silent = ticks_diff(now, self.wire.last_heard_ms) > self.ratings.silence_ms
         course.step(self.interlock.step(bits, course.state), now, silent)
         self._drive(now)
@@ -95,7 +97,9 @@ class Controller:
         if self.front.edge:
             bench.cut(now)
             bench.window = self.front.whole
-            if bench.window and self.supply.on:
+            if not self.supply.on:
+                bench.astray = False
+            elif bench.window:
                 bench.witness(now)
 
     def _drive(self, now):

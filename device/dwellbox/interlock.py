@@ -10,6 +10,9 @@ How it reads
 Why some rows wait: a relay bounces for 2 ms, lid switches for 10 ms at rest; the detector is faster than the divider, whose
 reading is one to three periods old while a small part charges or bleeds. Rows that guard a person (lid, stop) do not wait.
 
+A divider that has drifted, a charge relay or resistor that has opened, show as supply, current and part voltage that no longer
+fit together over the charge path; that is judged over a whole settled window and must stand into a second one.
+
 Known limits: the supply is read once in 100 ms, the thermistor once in 200 ms, so their rows act within that time; the
 hardware's own current limit and the part's own voltage guard hold until then.
 """
@@ -22,6 +25,7 @@ from .codes import (
     FAULT_CONVERTER_SILENT,
     FAULT_CONVERTER_STUCK,
     FAULT_DETECTOR,
+    FAULT_DIVIDER,
     FAULT_LID_OPEN,
     FAULT_LID_SWITCHES,
     FAULT_LOCK,
@@ -70,6 +74,7 @@ THERMISTOR = const(32768)
 SILENT = const(65536)
 STUCK = const(131072)
 LATE = const(262144)
+ASTRAY = const(524288)  # supply, current and part voltage do not fit together over the charge path
 
 _POWERED = (1 << CHARGE) | (1 << DWELL) | (1 << MEASURE) | (1 << FORM)
 _EMPTYING = (1 << DISCHARGE) | (1 << VERIFY) | (1 << RECOVERY)
@@ -94,6 +99,7 @@ TABLE = (
     (FAULT_SUPPLY, SUPPLY_LOST, 0, _POWERED, 1),
     (FAULT_REBOUND, PART_LIVE, 0, _REST, 6),
     (FAULT_REBOUND, HV, 0, _REST, 6),
+    (FAULT_DIVIDER, ASTRAY, 0, _POWERED, 25),
     (FAULT_LOCK, UNLOCKED, 0, _RUN, 100),
     (FAULT_OVER_CURRENT, OVER_CURRENT, 0, (1 << DWELL) | (1 << FORM), 2),
     (FAULT_OVER_TEMPERATURE, WARM, 0, _POWERED, 2),

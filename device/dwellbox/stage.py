@@ -10,6 +10,10 @@ from .codes import OUT_BLEED_OPEN, OUT_CHARGE, OUT_LOW_OPEN, OUT_MID_SHUNT
 from .compat import const, ticks_diff
 from .shunts import LEVELS, LOW_FINE, LOW_WIDE
 
+_ON_CHARGE = OUT_BLEED_OPEN | OUT_CHARGE
+_PATH_PM = const(35)  # both dividers, charge resistors and shunt, worst case, in thousandths
+_PATH_MV = const(4000)
+
 GO = const(0)
 NEXT = const(1)
 
@@ -61,6 +65,7 @@ class Bench:
         self.window = False  # a whole window has just been kept
         self.locked = False  # the bolt is in
         self.below = False  # both witnesses below safe
+        self.astray = False  # over the last window supply, current and part voltage did not fit together
         self.proof = None
         self.recording = None  # the ring, while a run is under way
         self.bleed_ms = 0
@@ -134,10 +139,16 @@ class Bench:
         return mv * 1000 // self.ratings.divider_kohm
 
     def witness(self, now):
-        """Supply minus 400 kohm times the shunt current below safe throughout: then the part never took charge."""
+        """Look at the charge path over a whole window: what the supply gives, less what 400 kohm drops, is what the part has."""
         front = self.front
-        if not self.supply.quiet(now):
+        self.astray = False
+        if not self.supply.quiet(now) or not front.settled(now) or front.clipped or self.supply.ramping:
             return
-        drop_mv = front.na(front.mean_code10) // 10 * (self.ratings.charge_ohm // 1000) // 1000
-        if self.supply.mv - drop_mv > self.ratings.safe_mv or front.clipped:
-            self.proof.never_charged = False
+        mv = front.mean_part_mv
+        drop_mv = (front.na(front.mean_code10) // 10 + self.divider_na(mv)) * (self.ratings.charge_ohm // 1000) // 1000
+        left_mv = self.supply.mv - drop_mv
+        if left_mv > self.ratings.safe_mv:
+            self.proof.never_charged = False  # the part may have taken charge: its divider must vouch otherwise
+        if self.relays == _ON_CHARGE:
+            slack_mv = self.supply.mv // 1000 * _PATH_PM + _PATH_MV
+            self.astray = not -slack_mv <= left_mv - mv <= slack_mv

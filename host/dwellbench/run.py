@@ -2,7 +2,7 @@
 
 Iterating follows the run until the box is at rest with the part proven discharged, or locked out. Stopping it (Ctrl-C, or
 `stop()`) sends an abort and goes on following until then: nothing that was measured is dropped, and the part is safe when the
-call returns, unless the error that it raises says otherwise.
+call returns, unless `proven` says otherwise: then the box still holds the lid locked.
 """
 
 from __future__ import annotations
@@ -37,7 +37,9 @@ class Run:
         self.end: str | None = None
         self.fault: str | None = None
         self.done: dict[str, Any] = {}
-        self.over = False  # at rest or locked out, and the part proven discharged
+        self.over = False
+        self.proven = False  # the part was proven discharged when it was over
+        self._ended_s = 0.0
         self._stopping = False
 
     def __iter__(self) -> Iterator[Notice]:
@@ -53,16 +55,16 @@ class Run:
         while waited < SAFE_S:
             notice = self._box.next_event(EVENT_S)
             if self._box.restarted:
-                raise FaultError(
-                    "The box was restarted during the run.",
-                    remedy="It proves the part discharged by itself; see: dwellbench box.",
-                    fault="reset_in_run",
-                )
+                self._finish()
+                raise _restarted()
             if notice is not None:
                 self._take(notice)
                 return notice
             waited += EVENT_S
             status = self._box.status()
+            if status["boot"] != self._box.identity.boot:
+                self._finish()
+                raise _restarted()
             if status["run"] != self.number:
                 break
             self._box.expect(status["n"])
@@ -76,6 +78,7 @@ class Run:
             self.state, self.stage = params["state"], params["stage"]
             proven = params["state"] == "lockout" and params["why"] == "discharge proven"
             if self.end is not None and (params["state"] == "rest" or proven):
+                self.proven = True
                 self._finish()
         elif notice.method == "fault":
             self.fault = self.fault or params["fault"]
@@ -83,6 +86,9 @@ class Run:
             self.done = params
             self.end = params["end"]
             self.fault = params["fault"] or self.fault
+            self._ended_s = self._box.clock()
+        if self.end is not None and not self.over and self._box.clock() - self._ended_s > SAFE_S:
+            self._finish()  # the box goes on bleeding and keeps the lid locked; nothing is gained by waiting here
 
     def _finish(self) -> None:
         self.over = True
@@ -133,3 +139,11 @@ class Run:
         """Raise FaultError if a fault ended the run."""
         if self.end == "fault":
             raise fault_error(self.fault or "board")
+
+
+def _restarted() -> FaultError:
+    return FaultError(
+        "The box was restarted during the run.",
+        remedy="It proves the part discharged by itself; see: dwellbench box.",
+        fault="reset_in_run",
+    )

@@ -149,6 +149,6 @@ class Charge:
 def supply_for(bench):
     """Return the supply's setting for the plan's voltage: the divider's own current drops 0.4 % over the charge path."""
     ratings = bench.ratings
-    drop = bench.plan.volts_mv // 1000 * (ratings.charge_ohm // 1000) // ratings.divider_kohm
-    mv = bench.plan.volts_mv + drop * 1000 // 1
+    drop_mv = bench.plan.volts_mv * (ratings.charge_ohm // 1000) // ratings.divider_kohm
+    mv = bench.plan.volts_mv + drop_mv
     return mv if mv < ratings.volts_mv else ratings.volts_mv
