@@ -1,7 +1,9 @@
 """One list of vectors for each layer of the wire, read by CPython's tests and by MicroPython itself (`on_micropython.py`).
 
-Only what both interpreters have: plain literals.
+Only what both interpreters have.
 """
+
+import binascii
 
 # (bytes, CRC-32). The first two: the check value of the published CRC catalogues, and the empty message. The others are this
 # project's lines, computed by zlib when the vectors are used (see test_crc), not taken on trust.
@@ -140,4 +142,99 @@ ROWS = (
     (0, 0, 0, 0, 0, 0, 0, 0, 0, 0, 0, 0, 0, 0, 0, 0, 0),
     (100, 6, 2, 1, 18, 288000, 15990, 16010, 20, -3, -4, 5, 0, 16384, 16390, 0, 0),
     (4000000, 11, 1, 0, 255, 8355585, -32768, 32767, 255, -8355840, -32768, 32767, 255, -32768, 32767, 15, 1),
+)
+
+
+def sealed(body):
+    """Return a line, without its newline, from the text of an object that lacks its closing brace."""
+    if isinstance(body, str):
+        body = body.encode()
+    return body + b',"crc":"%08x"}' % (binascii.crc32(body) & 0xFFFFFFFF)
+
+
+def asked(method, params="{}", id_="1"):
+    """Return the sealed line of a request."""
+    return sealed('{"jsonrpc":"2.0","id":%s,"method":"%s","params":%s' % (id_, method, params))
+
+
+_RUN = '{"run_key":"k","volts_mv":250000,"dwell_ms":60000%s}'
+
+# (line, error or 0, what explains it, the id that is answered or None)
+JUDGE = (
+    (asked("hello"), 0, None, 1),
+    (asked("hello", id_='"a b"'), 0, None, "a b"),
+    (asked("hello", id_="0"), 0, None, 0),
+    (asked("hello", id_="1073741823"), 0, None, 1073741823),
+    (asked("hello", id_='"sixteen letters."'), 0, None, "sixteen letters."),
+    (sealed('{"jsonrpc":"2.0","method":"keepalive"'), 0, None, None),
+    (sealed(' { "jsonrpc" : "2.0" , "method" : "status" , "id" : 4 '), 0, None, 4),
+    (sealed('{"method":"status","id":4,"jsonrpc":"2.0","more":[1,{"a":null}]'), 0, None, 4),
+    (asked("run", _RUN % ""), 0, None, 1),
+    (asked("run", _RUN % ',"unknown":"left out"'), 0, None, 1),
+    # by hand
+    (b'{"jsonrpc":"2.0","id":1,"method":"hello"}', 0, None, 1),
+    (b'{"jsonrpc":"2.0","id":1,"method":"status","params":{}}', 0, None, 1),
+    (b'{"jsonrpc":"2.0","method":"abort"}', 0, None, None),
+    (b'{"jsonrpc":"2.0","id":1,"method":"finish"}', -32002, None, 1),
+    (b'{"jsonrpc":"2.0","id":1,"method":"run","params":[]}', -32002, None, 1),
+    (b'{"jsonrpc":"2.0","method":"keepalive"}', -32002, None, None),
+    # the checksum
+    (asked("hello")[:-3] + b'g"}', -32000, None, None),
+    (asked("hello").replace(b"hello", b"hellp"), -32000, None, None),
+    (asked("hello").replace(b'"id":1', b'"id":2'), -32000, None, None),
+    (b'{"jsonrpc":"2.0","id":1,"method":"hello","crc":"DF3421D9"}', -32000, None, None),
+    (b'{"crc":"00000000","jsonrpc":"2.0","id":1,"method":"hello"}', -32000, None, None),
+    (b'{"jsonrpc":"2.0","id":1,"method":"hello","crc":"0000000"}', -32000, None, None),
+    (b'{"jsonrpc":"2.0","id":1,"method":"hello","crc":5}', -32000, None, None),
+    (b'{"jsonrpc":"2.0","id":1,"method":"hello", "crc":"df3421d9"}', -32000, None, None),
+    (asked("hello") + b" ", -32000, None, None),
+    (b'not JSON at all,"crc":"00000000"}', -32000, None, None),
+    (sealed("not JSON at all"), -32700, None, None),
+    # JSON
+    (b"hello", -32700, None, None),
+    (b"{", -32700, None, None),
+    (b"\xff\xfe\x00", -32700, None, None),
+    (b'{"jsonrpc":"2.0","method":"hello","id":1}}', -32700, None, None),
+    (b'{"jsonrpc":"2.0","id":01,"method":"hello"}', -32700, None, None),
+    (b"[" * 7 + b"]" * 7, -32700, None, None),
+    # requests
+    (b"1", -32600, "one object a line", None),
+    (b'"hello"', -32600, "one object a line", None),
+    (b"null", -32600, "one object a line", None),
+    (b"[]", -32600, "one object a line", None),
+    (b'[{"jsonrpc":"2.0","id":1,"method":"hello"}]', -32600, "one object a line", None),
+    (b"{}", -32600, "method", None),
+    (b'{"jsonrpc":"2.0","id":1}', -32600, "method", None),
+    (b'{"jsonrpc":"2.0","id":1,"method":5}', -32600, "method", None),
+    (b'{"jsonrpc":"2.0","id":1,"method":null}', -32600, "method", None),
+    (b'{"id":1,"method":"hello"}', -32600, "jsonrpc", None),
+    (b'{"jsonrpc":"1.0","id":1,"method":"hello"}', -32600, "jsonrpc", None),
+    (b'{"jsonrpc":2.0,"id":1,"method":"hello"}', -32600, "jsonrpc", None),
+    (b'{"jsonrpc":"2.0","id":1,"method":"hello","params":1}', -32600, "params", None),
+    (b'{"jsonrpc":"2.0","id":1,"method":"hello","params":null}', -32600, "params", None),
+    (b'{"jsonrpc":"2.0","id":1,"id":2,"method":"hello"}', -32600, "a member stands twice", None),
+    (asked("run", _RUN % ',"volts_mv":1'), -32600, "a member stands twice", None),
+    (asked("hello", id_="null"), -32600, "id", None),
+    (asked("hello", id_="true"), -32600, "id", None),
+    (asked("hello", id_="-1"), -32600, "id", None),
+    (asked("hello", id_="1.0"), -32600, "id", None),
+    (asked("hello", id_="1073741824"), -32600, "id", None),
+    (asked("hello", id_='""'), -32600, "id", None),
+    (asked("hello", id_='"seventeen letters"'), -32600, "id", None),
+    (asked("hello", id_='"\\u00e9"'), -32600, "id", None),
+    (asked("hello", id_="[1]"), -32600, "id", None),
+    # methods
+    (asked("Hello"), -32601, None, 1),
+    (asked(""), -32601, None, 1),
+    (asked("rpc.discover", id_='"x"'), -32601, None, "x"),
+    (b'{"jsonrpc":"2.0","id":1,"method":"nothing"}', -32601, None, 1),
+    # parameters
+    (asked("hello", "[]"), -32602, "by name only", 1),
+    (asked("run", '["k",1,1]'), -32602, "by name only", 1),
+    (asked("run"), -32602, "run_key", 1),
+    (asked("run", _RUN % ',"nudge":1'), -32602, "nudge", 1),
+    (asked("run", _RUN % ',"ceiling_ua":true'), -32602, "ceiling_ua", 1),
+    (asked("run", _RUN % ',"expect_pf":1.0'), -32602, "expect_pf", 1),
+    (asked("samples"), -32602, "from", 1),
+    (asked("samples", '{"from":0,"count":0}'), -32602, "count", 1),
 )

@@ -1,0 +1,127 @@
+"""Run under MicroPython: the firmware's own files over the same vectors. One line a layer: its name and how many it checked.
+
+    MICROPYPATH=.frozen:device:tests/device micropython tests/device/on_micropython.py
+
+An assertion that fails ends the process with MicroPython's own traceback, which the test shows.
+"""
+
+import binascii
+import json
+
+from dwellbox.crc import Crc
+from dwellbox.encode import Line, text
+from dwellbox.ring import Ring
+from dwellbox.rpc import judge
+from dwellbox.scan import NOT_WHOLE, Scanner
+from wire_vectors import BAD, CRC, ENCODE, FRACTION, JUDGE, ROWS, SCAN, TWICE
+
+
+class Sink:
+    """A link with room for `room` bytes a period."""
+
+    def __init__(self, room):
+        self._room = room
+        self._left = 0
+        self.data = bytearray()
+
+    def next_period(self):
+        self._left = self._room
+
+    def room(self):
+        return self._left
+
+    def put(self, byte):
+        assert self._left > 0
+        self._left -= 1
+        self.data.append(byte)
+
+
+def plain(value):
+    if value is NOT_WHOLE:
+        return FRACTION
+    if isinstance(value, list):
+        return [plain(item) for item in value]
+    if isinstance(value, dict):
+        return {key: plain(item) for key, item in value.items()}
+    return value
+
+
+def check_crc():
+    crc = Crc()
+    for data, expected in CRC:
+        crc.begin()
+        for byte in data:
+            crc.add(byte)
+        out = bytearray(8)
+        crc.hex_into(out, 0)
+        assert out == expected.encode(), (data, out)
+    return len(CRC)
+
+
+def check_scan():
+    scanner = Scanner()
+    for data, expected in SCAN:
+        for tail in (b"", b" \t\r", b" x"):
+            scanner.begin()
+            for byte in data + tail:
+                scanner.feed(byte)
+            if tail == b" x":
+                assert not scanner.finish(), data
+            elif scanner.finish():
+                found = plain(scanner.value)
+                assert found == expected and type(found) is type(expected), (data, found)
+            else:
+                assert expected == BAD, data
+    for data in TWICE:
+        scanner.begin()
+        for byte in data:
+            scanner.feed(byte)
+        assert scanner.finish() and scanner.twice, data
+    return len(SCAN) + len(TWICE)
+
+
+def check_encode():
+    for value, expected in ENCODE:
+        assert text(value) == expected, (value, text(value))
+    return len(ENCODE)
+
+
+def check_rows():
+    line = Line(7)
+    for row in ROWS:
+        for room in (64, 1, 5):
+            ring = Ring(64)
+            ring.sample(*row)
+            line.begin_sample(ring, 0)
+            sink = Sink(room)
+            while line.busy:
+                sink.next_period()
+                if line.fill(6):
+                    line.send(sink, 32)
+            body = bytes(sink.data)[:-19]
+            assert bytes(sink.data)[-19:] == b',"crc":"%08x"}\n' % binascii.crc32(body), sink.data
+            assert json.loads(body + b"}")["params"] == {"n": 0, "boot": 7, "rows": [[0] + list(row)]}, sink.data
+    return len(ROWS)
+
+
+def check_judge():
+    scanner = Scanner()
+    for line, error, data, id_ in JUDGE:
+        scanner.begin()
+        for byte in line:
+            scanner.feed(byte)
+        request = judge(line, len(line), scanner)
+        assert (request.error, request.data) == (error, data), (line, request.error, request.data)
+        if id_ is not None:
+            assert request.id == id_ and type(request.id) is type(id_), (line, request.id)
+    return len(JUDGE)
+
+
+for name, check in (
+    ("crc", check_crc),
+    ("scan", check_scan),
+    ("encode", check_encode),
+    ("rows", check_rows),
+    ("judge", check_judge),
+):
+    print(name, check())

@@ -1,0 +1,18 @@
+"""The same vectors through the same firmware files under the real MicroPython, in one process for all."""
+
+from __future__ import annotations
+
+from micropython_process import run_script
+from wire_vectors import CRC, ENCODE, JUDGE, ROWS, SCAN, TWICE
+
+
+def test_vectors() -> None:
+    said = dict(line.split() for line in run_script("on_micropython.py", "-X", "heapsize=512K").splitlines())
+    counts = {
+        "crc": len(CRC),
+        "scan": len(SCAN) + len(TWICE),
+        "encode": len(ENCODE),
+        "rows": len(ROWS),
+        "judge": len(JUDGE),
+    }
+    assert said == {name: str(count) for name, count in counts.items()}
