@@ -25,7 +25,8 @@ if _HANDLERS not in serial.protocol_handler_packages:
 
 # Where the public names live; they are imported when they are first used, so that a script pays for what it needs.
 _PUBLIC = {
-    "open_box": "dwellbench.box",
+    "open_box": "dwellbench.bench",
+    "Bench": "dwellbench.bench",
     "Box": "dwellbench.box",
     "Part": "dwellbench.part",
     "Plan": "dwellbench.plan",
@@ -38,7 +39,8 @@ _PUBLIC = {
 __all__ = ["__version__", *_PUBLIC]
 
 if TYPE_CHECKING:
-    from dwellbench.box import Box, open_box
+    from dwellbench.bench import Bench, open_box
+    from dwellbench.box import Box
     from dwellbench.errors import DwellbenchError
     from dwellbench.judge import analyse
     from dwellbench.outcome import Outcome

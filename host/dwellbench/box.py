@@ -1,6 +1,6 @@
 """One box: connect, identify, ask, run, stream, take up again after a lost link.
 
-    with open_box("emu://film") as box:
+    with Box("emu://film") as box:
         run = box.start(plan)
         for happening in run:          # samples, state, fault, done, log, in order, none missing
             ...
@@ -15,7 +15,6 @@ import json
 from collections import deque
 from collections.abc import Callable
 from dataclasses import dataclass, field
-from pathlib import Path
 from types import TracebackType
 from typing import Any
 
@@ -391,12 +390,3 @@ class Box:
         import time
 
         time.sleep(seconds)
-
-
-def open_box(url: str, *, wire_log: str | Path | None = None) -> Box:
-    """Connect to a box. Raises NoBoxError, WrongBoxError or UsageError; the link may be any pyserial URL."""
-    log = None if wire_log is None else WireLog(Path(wire_log))
-    return Box(url, wire_log=log)
-
-
-__all__ = ["Box", "Identity", "RefusedError", "open_box"]

@@ -41,6 +41,7 @@ class Run:
         self.proven = False  # the part was proven discharged when it was over
         self._ended_s = 0.0
         self._stopping = False
+        self._unseen: list[Notice] = []
 
     def __iter__(self) -> Iterator[Notice]:
         while not self.over:
@@ -48,6 +49,11 @@ class Run:
                 yield self._next()
             except KeyboardInterrupt:
                 self._interrupted()
+
+    def unseen(self) -> list[Notice]:
+        """The events that came while the run was being stopped, and that no iteration has given."""
+        unseen, self._unseen = self._unseen, []
+        return unseen
 
     def _next(self) -> Notice:
         """The next event; none for a while means that the box is asked whether it is still at it."""
@@ -104,7 +110,7 @@ class Run:
             self._stopping = True
             self._box.abort()
         while not self.over:
-            self._next()
+            self._unseen.append(self._next())
 
     def _interrupted(self) -> None:
         try:
