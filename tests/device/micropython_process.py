@@ -7,6 +7,7 @@ import subprocess
 from pathlib import Path
 
 import pytest
+
 from dwellbench.emulator import lockstep
 from dwellbench.errors import UsageError
 

@@ -8,12 +8,13 @@ An assertion that fails ends the process with MicroPython's own traceback, which
 import binascii
 import json
 
+from wire_vectors import BAD, CRC, ENCODE, FRACTION, JUDGE, ROWS, SCAN, TWICE
+
 from dwellbox.crc import Crc
 from dwellbox.encode import Line, text
 from dwellbox.ring import Ring
 from dwellbox.rpc import judge
 from dwellbox.scan import NOT_WHOLE, Scanner
-from wire_vectors import BAD, CRC, ENCODE, FRACTION, JUDGE, ROWS, SCAN, TWICE
 
 
 class Sink:
@@ -100,7 +101,7 @@ def check_rows():
                     line.send(sink, 32)
             body = bytes(sink.data)[:-19]
             assert bytes(sink.data)[-19:] == b',"crc":"%08x"}\n' % binascii.crc32(body), sink.data
-            assert json.loads(body + b"}")["params"] == {"n": 0, "boot": 7, "rows": [[0] + list(row)]}, sink.data
+            assert json.loads(body + b"}")["params"] == {"n": 0, "boot": 7, "rows": [[0] + list(row)]}, sink.data  # noqa: RUF005 - no stars in displays here
     return len(ROWS)
 
 

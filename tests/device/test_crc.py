@@ -5,10 +5,11 @@ from __future__ import annotations
 import zlib
 
 import pytest
-from dwellbox.crc import Crc
 from hypothesis import given
 from hypothesis import strategies as st
 from wire_vectors import CRC
+
+from dwellbox.crc import Crc
 
 
 def digits(data: bytes, crc: Crc | None = None) -> str:

@@ -7,12 +7,13 @@ import zlib
 from typing import Any
 
 import pytest
-from dwellbox.codes import DWELL, END_SHORT, FAULT_LID_OPEN, FAULT_NONE, ST_DWELL
-from dwellbox.encode import LINE, Line, text
-from dwellbox.ring import Ring
 from hypothesis import given
 from hypothesis import strategies as st
 from wire_vectors import ENCODE, ROWS
+
+from dwellbox.codes import DWELL, END_SHORT, FAULT_LID_OPEN, FAULT_NONE, ST_DWELL
+from dwellbox.encode import LINE, Line, text
+from dwellbox.ring import Ring
 
 
 class Sink:
@@ -116,7 +117,11 @@ def test_the_longest_sample_line_fits() -> None:
 
 EVENTS = (
     ("state", lambda ring: ring.state(5, DWELL, ST_DWELL, "up"), {"t": 5, "state": "dwell", "stage": "dwell", "why": "up"}),
-    ("fault", lambda ring: ring.fault(-1, FAULT_LID_OPEN, DWELL, 3), {"t": -1, "fault": "lid_open", "state": "dwell", "value": 3}),
+    (
+        "fault",
+        lambda ring: ring.fault(-1, FAULT_LID_OPEN, DWELL, 3),
+        {"t": -1, "fault": "lid_open", "state": "dwell", "value": 3},
+    ),
     (
         "done",
         lambda ring: ring.done(9, 2, "k", END_SHORT, FAULT_NONE, [("look_pf", 0), ("short_na", 1)]),

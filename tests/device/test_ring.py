@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import pytest
-from dwellbox.codes import DWELL, FAULT_NONE, ST_DWELL
-from dwellbox.ring import DONE, FAULT, LOG, SAMPLE, STATE, Ring
 from hypothesis import given
 from hypothesis import strategies as st
 from wire_vectors import ROWS
+
+from dwellbox.codes import DWELL, FAULT_NONE, ST_DWELL
+from dwellbox.ring import DONE, FAULT, LOG, SAMPLE, STATE, Ring
 
 _byte = st.integers(0, 255)
 _short = st.integers(-32768, 32767)

@@ -1,4 +1,4 @@
-"""A line judged: the first failure answers, in the order the protocol states; each parameter is named that is missing or wrong."""
+"""A line judged: the first failure answers, in the stated order; each parameter is named that is missing or wrong."""
 
 from __future__ import annotations
 
@@ -6,12 +6,13 @@ import json
 from typing import Any
 
 import pytest
-from dwellbox.codes import E_INVALID_PARAMS
-from dwellbox.rpc import BY_HAND, NO_ID, PARAMS, Request, crc_of, judge
-from dwellbox.scan import Scanner
 from hypothesis import given
 from hypothesis import strategies as st
 from wire_vectors import JUDGE, asked, sealed
+
+from dwellbox.codes import E_INVALID_PARAMS
+from dwellbox.rpc import BY_HAND, NO_ID, PARAMS, Request, crc_of, judge
+from dwellbox.scan import Scanner
 
 
 def judged(line: bytes, length: int | None = None) -> Request:

@@ -10,10 +10,11 @@ import re
 from typing import Any
 
 import pytest
-from dwellbox.scan import NOT_WHOLE, Scanner
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from wire_vectors import BAD, FRACTION, SCAN, TWICE
+
+from dwellbox.scan import NOT_WHOLE, Scanner
 
 DEPTH = 6
 DIGITS = 15
@@ -64,9 +65,7 @@ def _refuse(text: str) -> Any:
 def by_python(text: bytes) -> Any:
     """What the RFC makes of it, with this wire's stated refusals."""
     try:
-        value = json.loads(
-            text.decode("utf-8"), parse_int=_whole, parse_float=lambda text: FRACTION, parse_constant=_refuse
-        )
+        value = json.loads(text.decode("utf-8"), parse_int=_whole, parse_float=lambda text: FRACTION, parse_constant=_refuse)
     except (ValueError, RecursionError):
         return BAD
     if depth(value) > DEPTH or lone_surrogate(value):

@@ -6,13 +6,14 @@ import json
 from typing import Any
 
 import pytest
-from dwellbox.encode import LINE
-from dwellbox.ring import Ring
-from dwellbox.wire import Refusal, Wire
 from hypothesis import given
 from hypothesis import strategies as st
 from link_board import LinkBoard
 from wire_vectors import JUDGE, ROWS, asked, sealed
+
+from dwellbox.encode import LINE
+from dwellbox.ring import Ring
+from dwellbox.wire import Refusal, Wire
 
 IN_A_PERIOD = 32
 OUT_A_PERIOD = 32
@@ -81,7 +82,7 @@ def brief(lines: list[dict[str, Any]]) -> list[tuple[Any, Any, Any]]:
 
 def _answered(row: tuple[bytes, int, str | None, Any]) -> bool:
     """Requests without an id get no answer, right or wrong, unless nothing can be told of them."""
-    line, error, _, id_ = row
+    _, error, _, id_ = row
     return id_ is not None or error in (-32700, -32600, -32000) or error == 0
 
 
@@ -340,7 +341,7 @@ def test_samples_again_page_by_page_is_everything_kept() -> None:
     bench.feed(asked("hello") + b"\n")
     at, got = 0, []
     while True:
-        answer, *events = bench.feed(asked("samples", '{"from":%d,"count":20}' % at) + b"\n", periods=300)
+        answer, *events = bench.feed(asked("samples", f'{{"from":{at},"count":20}}') + b"\n", periods=300)
         if not answer["result"]["count"]:
             break
         got += [line["params"]["rows"][0][:2] for line in events]

@@ -154,7 +154,7 @@ def sealed(body):
 
 def asked(method, params="{}", id_="1"):
     """Return the sealed line of a request."""
-    return sealed('{"jsonrpc":"2.0","id":%s,"method":"%s","params":%s' % (id_, method, params))
+    return sealed(f'{{"jsonrpc":"2.0","id":{id_},"method":"{method}","params":{params}')
 
 
 _RUN = '{"run_key":"k","volts_mv":250000,"dwell_ms":60000%s}'
