@@ -1,7 +1,7 @@
 """Write the firmware's `codes.py` from `codes.json`, the one source of states, faults, errors and bits.
 
-    python protocol/make_codes.py            write device/dwellbox/codes.py
-    python protocol/make_codes.py --check    exit 1 when it is not what codes.json makes of it
+python protocol/make_codes.py            write device/dwellbox/codes.py
+python protocol/make_codes.py --check    exit 1 when it is not what codes.json makes of it
 """
 
 import json
