@@ -24,7 +24,7 @@ from dwellbench.limits.place import ANY, Place
 from dwellbench.measure.csv_read import read_csv
 from dwellbench.measure.estimates import estimate
 from dwellbench.measure.trace import Trace
-from dwellbench.outcome import Outcome
+from dwellbench.outcome import Finding, Outcome
 from dwellbench.part import Part
 from dwellbench.plan import GRADES
 from dwellbench.quantity import Quantity
@@ -141,6 +141,8 @@ def _measured(case: Case) -> Outcome:
     series = as_new_rows(case)
     rows = place_rows(case, case.place, case.place_V) if case.place is not None else series
     found = findings(case, rows, series)
+    if any(finding.id == "open_lead" for finding in found):
+        return _unconnected(case, found)
     suits, not_for = places_of(case)
     decision = decide(case, rows, found, bool(suits))
     shown = [*rows, *(row for row in series if case.place is not None)]
@@ -171,6 +173,27 @@ def _measured(case: Case) -> Outcome:
         grid_shift_V=_grid_shift(case),
         assumed=assumed(case),
         notes=notes(case, found),
+    )
+
+
+def _unconnected(case: Case, found: list[Finding]) -> Outcome:
+    """Nothing was connected, so what the shunt read says nothing of the part."""
+    decision = decide(case, [], found, False)
+    kept = tuple(
+        finding for finding in found if finding.id in ("open_lead", "uncalibrated", "residual_charge")
+    )
+    return Outcome(
+        **_stamp(case),
+        verdict=decision.verdict,
+        reason=decision.reason,
+        next=decision.next,
+        to_decide=decision.to_decide,
+        findings=kept,
+        not_tested=not_tested(case),
+        dwell_s=case.estimates.dwell_s,
+        dwell_complete=_complete(case),
+        capacitance_F=case.capacitance,
+        assumed=assumed(case),
     )
 
 

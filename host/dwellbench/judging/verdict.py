@@ -32,7 +32,7 @@ class Decision:
 
 
 def decide(case: Case, rows: list[Row], found: list[Finding], elsewhere: bool) -> Decision:
-    """Decide. `rows` are the limits that rule, hardest first; `elsewhere`: other places would take the part."""
+    """Decide. `rows` are the limits that rule, hardest first; `elsewhere`: other places take the part."""
     ids = {finding.id: finding.evidence for finding in found}
     verdict, reason, to_decide = _verdict(case, [row for row in rows if row.rules], ids)
     return Decision(verdict, reason, _next(case, verdict, rows, ids, elsewhere), to_decide)
@@ -145,6 +145,8 @@ def _doubtful(case: Case, rows: list[Row], ids: dict[str, str]) -> _Answer:
         )
     if "charging" in ids:
         return UNDECIDED, f"The charge is not in yet. {ids['charging']}", "Hold the voltage longer."
+    if "sag" in ids and "forming" in ids:
+        return UNDECIDED, f"Still forming: {ids['sag']}", "Re-form it, let it rest, then test again."
     if "sag" in ids and case.place is None:
         return UNDECIDED, ids["sag"], "Test it at a voltage that the charge path can hold."
     return None

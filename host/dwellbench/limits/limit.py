@@ -13,7 +13,7 @@ from math import sqrt
 from dwellbench.part import Part
 
 TOTAL_CURRENT, INSULATION = "total_current_A", "insulation_ohm"
-UNITS = {TOTAL_CURRENT: "A", INSULATION: "ohm", "capacitance_F": "F", "rated_V": "V", "grid_shift_V": "V"}
+UNITS = {TOTAL_CURRENT: "A", INSULATION: "ohm", "capacitance_F": "F", "rated_V": "V"}
 
 PUBLISHED = "published standard"
 DATA_SHEET = "data sheet"

@@ -30,6 +30,8 @@ _LEAST_RISE_V = 2.0
 _LEAST_ROWS = 3
 _STEADY_ROWS = 5
 _EARLIEST_ROW = 5
+_TREND_U = 3.0  # doubts that two sums must differ by before the difference is followed
+_BEGINS = 5  # rows at which a sum may begin: the first holds the step, unless it came before
 _LEAK_U = 0.003  # what a leak that is read twice alike may still have been in between
 _LOW_V = (15.0, 55.0)
 _LOW_RISE_V = 10.0
@@ -108,19 +110,14 @@ def charge_balance(
         return None
     balance = _Balance(trace, stretch)
     leaks = balance.with_late(leaks or Leaks(None, None))
-    cuts = balance.cuts()
-    found = [balance.farads(cut, leaks.at(balance.share(cut))[0]) for cut in cuts]
-    own = [
-        hypot(
-            balance.u_noise_F(cut),
-            leaks.at(balance.share(cut))[1] * balance.per_volt_s(cut),
-            (farads - found[0]) / 2.0,
-        )
-        for cut, farads in zip(cuts, found, strict=True)
-    ]
-    best = int(np.argmin(own))
-    u_shared = abs(found[best]) * hypot(circuit.u_gain_i, circuit.u_gain_v)
-    return Estimate(found[best] - circuit.fixture_F, hypot(own[best], FIXTURE_U_F), u_shared, cuts[best] + 1)
+    sums = [balance.sum_to(cut, leaks) for cut in balance.cuts()]
+    trend_F = balance.trend_F(sums)
+    doubts = [hypot(one.u_own, (one.value - sums[0].value) / 2.0) for one in sums]
+    best = int(np.argmin(doubts))
+    farads = sums[best].value - (trend_F if best == 0 else 0.0)
+    u_own = hypot(doubts[best], trend_F / 2.0, FIXTURE_U_F)
+    u_shared = abs(farads) * hypot(circuit.u_gain_i, circuit.u_gain_v)
+    return Estimate(farads - circuit.fixture_F, u_own, u_shared, sums[best].rows)
 
 
 class _Balance:
@@ -134,6 +131,7 @@ class _Balance:
         self.volts = trace.across_V[rows]
         self.charge = _running(self.amps, self.dt, self.t)
         self.area = _running(self.volts, self.dt, self.t)
+        self.edge_C = _edges(self.amps, self.dt)
         self.u_offset_A = float(trace.u_offset_A[rows].max())
         self.code_A = float(trace.range_V[stretch.first] / 32768.0 / trace.shunt_ohm[stretch.first])
         self.full = min(max(self._reaches(_IN) + 1, 2), len(self.t) - 1)
@@ -147,20 +145,36 @@ class _Balance:
         early = [self._reaches(share) for share in _CUTS] if self.smooth else []
         return [*(cut for cut in early if cut >= _EARLIEST_ROW), self.full]
 
-    def farads(self, cut: int, siemens: float) -> float:
-        """Capacitance when so much leaks."""
-        charge = self.charge[cut] - self.charge[0] - siemens * (self.area[cut] - self.area[0])
-        return float(charge / (self.volts[cut] - self.volts[0]))
+    def sum_to(self, cut: int, leaks: Leaks) -> Estimate:
+        """The capacitance with the sum ended at `cut`, begun at the row where that is surest."""
+        begins = range(min(_BEGINS, max(cut // 3, 1)))
+        ways = [self._between(begin, cut, leaks) for begin in begins]
+        return min(ways, key=lambda way: way.u_own)
 
-    def per_volt_s(self, cut: int) -> float:
-        """Farads for each siemens of leakage: volt-seconds over volts."""
-        return float((self.area[cut] - self.area[0]) / (self.volts[cut] - self.volts[0]))
+    def trend_F(self, sums: list[Estimate]) -> float:
+        """How far the shortest sum is still off, when the next longer one differs: a leak that is not what it
+        was taken for puts each off in proportion to its volt-seconds over volts.
+        """
+        if len(sums) < 2:
+            return 0.0
+        near, far = (self.area[k] / max(float(self.volts[k] - self.volts[0]), 1e-9) for k in self.cuts()[:2])
+        step_F = sums[1].value - sums[0].value
+        if far <= near or abs(step_F) < _TREND_U * hypot(sums[0].u_own, sums[1].u_own):
+            return 0.0
+        return float(step_F * near / (far - near))
 
-    def u_noise_F(self, cut: int) -> float:
-        """Noise of the sum (a code a window at worst), and the zero's doubt over its whole time."""
-        dt = self.dt[: cut + 1]
-        noise = self.code_A * float(np.sqrt(np.sum(dt**2)))
-        return float(np.hypot(noise, self.u_offset_A * dt.sum()) / (self.volts[cut] - self.volts[0]))
+    def _between(self, begin: int, cut: int, leaks: Leaks) -> Estimate:
+        siemens, doubt_S = leaks.at(self.share(cut))
+        rise_V = float(self.volts[cut] - self.volts[begin])
+        if rise_V <= 0.0:
+            return Estimate(0.0, np.inf)
+        area = float(self.area[cut] - self.area[begin])
+        dt = self.dt[begin : cut + 1]
+        noise_C = hypot(self.code_A * float(np.sqrt(np.sum(dt**2))), self.u_offset_A * float(dt.sum()))
+        edges_C = hypot(float(self.edge_C[begin]), float(self.edge_C[cut]))
+        u_own = hypot(noise_C, edges_C, doubt_S * area) / rise_V
+        value = (float(self.charge[cut] - self.charge[begin]) - siemens * area) / rise_V
+        return Estimate(value, u_own, rows=cut - begin + 1)
 
     def share(self, cut: int) -> float:
         """Voltage at the cut as a share of that at the end."""
@@ -185,9 +199,13 @@ class _Balance:
         late = slice(first, min(first + 4 * _STEADY_ROWS, len(self.t)))
         t, volts, amps = self.t[late], self.volts[late], self.amps[late]
         slope = float(np.polynomial.polynomial.polyfit(t - t[0], volts, 1)[1])
+        rise_V = float(self.volts[self.full] - self.volts[0])
         siemens = 0.0
         for _ in range(4):
-            siemens = float(np.mean(amps) - self.farads(self.full, siemens) * slope) / float(np.mean(volts))
+            farads = (
+                self.charge[self.full] - self.charge[0] - siemens * (self.area[self.full] - self.area[0])
+            ) / rise_V
+            siemens = float(np.mean(amps) - farads * slope) / float(np.mean(volts))
         return siemens
 
 
@@ -195,6 +213,17 @@ def _running(values: Floats, dt: Floats, t: Floats) -> Floats:
     """The integral of `values` since the beginning, averaged over each window."""
     before = np.concatenate(([0.0], np.cumsum(values * dt)[:-1]))
     return np.asarray(before + values * dt / 2.0 - _slope(values, t) * dt**2 / 12.0)
+
+
+def _edges(amps: Floats, dt: Floats) -> Floats:
+    """How far off the charge by the middle of each row may be, coulombs: what bends within the row. A row
+    before any current is sure; the first and the last, whose neighbour is not known, are as doubtful as they
+    differ from the next.
+    """
+    steps = np.diff(amps)
+    bend = np.abs(np.diff(steps)) / 24.0
+    ends = np.abs(steps[[0, -1]]) / 8.0
+    return np.asarray(np.minimum(np.concatenate((ends[:1], bend, ends[1:])), np.abs(amps) / 2.0) * dt)
 
 
 def _slope(values: Floats, t: Floats) -> Floats:

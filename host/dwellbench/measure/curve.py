@@ -31,6 +31,7 @@ _MOST_ROWS = 48  # more are averaged together: what fits needs is a few rows in 
 _LEAST_ROWS = 4
 _NOISE_CODE = 0.25  # of a row's mean: a code in a single reading, twenty readings
 _MODEL = 2e-4  # of the step: what ripple, drift and converter bends do to single rows
+_NO_SENSE = 1e60  # residual of parameters that no circuit has
 _WORST_U = 0.1  # relative doubt above which the curve says nothing of the capacitance
 
 
@@ -115,7 +116,7 @@ def _fit(rows: _Rows, circuit: Circuit, guess_F: float, slew_s_per_V: float) -> 
 
     def residuals(p: Floats) -> Floats:
         if abs(p[0]) > 3.0 or not floor_S < p[1] < 1.0 or not 0.0 < p[2] < 1e4 or abs(p[4]) > 0.5:
-            return np.full(2 * rows.count + 1, 1e150)
+            return np.full(2 * rows.count + 1, _NO_SENSE)
         node_V, amps = charged(
             rows,
             circuit,

@@ -77,7 +77,11 @@ class Estimates:
     def capacitance_F(self) -> Quantity | None:
         """The direct-current capacitance."""
         found = self.capacitance
-        return None if found is None else Quantity.of(found.value, found.u)
+        if found is None:
+            return None
+        if found.value <= COVERAGE_95 * found.u:
+            return Quantity.below(max(found.value, 0.0) + COVERAGE_95 * found.u)
+        return Quantity.of(found.value, found.u)
 
     def total_current_A(self) -> Quantity | None:
         """The conventional reading at the end of the dwell."""
@@ -145,7 +149,7 @@ def estimate(trace: Trace, expect_F: float | None = None, dielectric: str | None
     leaks = _leaks(leak, low)
     balance = charge_balance(trace, circuit, stretch, leaks)
     curve = fit_curve(trace, circuit, stretch, balance.value if balance else None)
-    combined, apart = combine(balance, curve)
+    combined, apart = combine(balance, curve, _APART + _absorbed(dielectric))
     if dielectric in CLASS_II:
         combined = _at_low_volts(trace, circuit, stretch, leaks) or combined
     end_s = _dwell_s(trace)
@@ -180,7 +184,9 @@ def _dwell_s(trace: Trace) -> float | None:
     return None if begin_s is None else round(float(trace.t_s[trace.rows("dwell")][-1]) - begin_s, 6)
 
 
-def combine(balance: Estimate | None, curve: Curve | None) -> tuple[Estimate | None, float | None]:
+def combine(
+    balance: Estimate | None, curve: Curve | None, alike: float = _APART
+) -> tuple[Estimate | None, float | None]:
     """Weigh the two capacitances by their own doubts. When they disagree the balance stands, with the
     difference as doubt: a disagreement is a finding, not an average. Returns (estimate, relative difference
     or None).
@@ -190,7 +196,7 @@ def combine(balance: Estimate | None, curve: Curve | None) -> tuple[Estimate | N
     other = curve.capacitance
     apart = (other.value - balance.value) / balance.value
     u_apart = hypot(balance.u_own, other.u_own) / balance.value
-    if abs(apart) > max(_APART, _APART_U * u_apart):
+    if abs(apart) > max(alike, _APART_U * u_apart):
         return Estimate(
             balance.value, hypot(balance.u_own, abs(apart) * balance.value / 2.0), balance.u_shared
         ), apart
@@ -218,6 +224,11 @@ def _with_absorption(found: Estimate | None, dielectric: str | None) -> Estimate
     """
     if found is None:
         return None
-    share = ABSORBED_SHARE.get(dielectric or "", _ABSORBED_UNKNOWN)
-    absorbed = abs(found.value) * share * _ABSORBED_DECADES
-    return Estimate(found.value, hypot(found.u_own, absorbed), found.u_shared, found.rows)
+    return Estimate(
+        found.value, hypot(found.u_own, abs(found.value) * _absorbed(dielectric)), found.u_shared, found.rows
+    )
+
+
+def _absorbed(dielectric: str | None) -> float:
+    """The share of a direct-current capacitance that may be absorption."""
+    return ABSORBED_SHARE.get(dielectric or "", _ABSORBED_UNKNOWN) * _ABSORBED_DECADES
