@@ -290,6 +290,7 @@ class Course:
         self._accounting = False
         self.runner.end = END_COMPLETE
         self.conditions.most_mv = plan.most_mv()
+        self.bench.cut(self.now_ms)  # what was read at rest belongs to no run
         self.bench.prepare(plan, self.now_ms, self._residual_mv)
         self.event(EV_RUN, "run " + plan.key)
         self.proof.forget()

@@ -12,10 +12,14 @@ import os
 import select
 import socket
 import time
-import tty
 from collections.abc import Callable
 from pathlib import Path
 from typing import Protocol
+
+try:
+    import tty
+except ImportError:  # Windows
+    tty = None  # type: ignore[assignment]
 
 from dwellbench.emulator.emulated_box import EmulatedBox
 from dwellbench.errors import UsageError
@@ -141,8 +145,14 @@ class Tcp:
                 one.close()
 
 
-def serve(box: EmulatedBox, outlet: Outlet, speed: float, stop: Callable[[], bool] = lambda: False) -> None:
-    """Run the box until `stop()` says so or the user interrupts. `speed` 1 is real time."""
+def serve(
+    box: EmulatedBox,
+    outlet: Outlet,
+    speed: float,
+    stop: Callable[[], bool] = lambda: False,
+    on_end: Callable[[], None] = lambda: None,
+) -> None:
+    """Run the box until `stop()` says so or the user interrupts. `speed` 1 is real time; `on_end` may keep its state."""
     start = time.monotonic()
     base_s = box.now_s
     try:
@@ -163,4 +173,5 @@ def serve(box: EmulatedBox, outlet: Outlet, speed: float, stop: Callable[[], boo
         pass
     finally:
         outlet.close()
+        on_end()
         box.stop()
