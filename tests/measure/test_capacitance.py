@@ -48,7 +48,7 @@ def test_charge_balance_is_right_within_its_doubt(setup: Setup) -> None:
 @settings(max_examples=25, deadline=None, derandomize=True)
 @given(setup=PARTS)
 def test_the_curve_fits_within_its_doubt(setup: Setup) -> None:
-    trace = trace_of(setup)
+    trace = trace_of(setup, box="0011223344556677")
     first = balance_of(trace, setup.leak_S)
     found = fit_curve(trace, circuit_of(trace), stretch_of(trace), first.value)
     assert found is not None

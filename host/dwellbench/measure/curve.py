@@ -27,6 +27,7 @@ from dwellbench.measure.trace import Circuit, Floats, Trace
 _SLEWS = (0.0, 1e-4)  # seconds a volt: at once (another box's relay), or this box's supply at 10 V/ms
 _GOOD = 1.5  # scatter below which the first that fits is taken
 _TAUS = 6.0
+_BEGUN = 0.002  # of the rise
 _MOST_ROWS = 48  # more are averaged together: what fits needs is a few rows in each time constant
 _LEAST_ROWS = 4
 _NOISE_CODE = 0.25  # of a row's mean: a code in a single reading, twenty readings
@@ -76,11 +77,13 @@ class _Rows:
         self.shunt_ohm = float(trace.shunt_ohm[stretch.first])
         tau_s = guess_F * (circuit.thevenin_ohm + self.shunt_ohm)
         volts = trace.across_V[stretch.first : stretch.last + 1]
-        begin = stretch.first + max(int(np.argmax(volts > volts[0] + 0.01 * (volts[-1] - volts[0]))) - 1, 0)
+        rise_V = float(volts[-1] - volts[0])
+        begin = stretch.first + max(int(np.argmax(volts > volts[0] + _BEGUN * rise_V)) - 1, 0)
+        # a record that begins with the step itself is taken to begin with a part that was bled
+        self.start_V = float(volts[0]) if abs(float(volts[0])) < _BEGUN * rise_V else 0.0
         until_s = float(trace.t_s[begin]) + _TAUS * tau_s + 2.0 * float(trace.interval_s[begin])
         last = begin + int(np.searchsorted(trace.t_s[begin : stretch.last + 1], until_s))
         rows = np.arange(begin, min(last, stretch.last) + 1)
-        self.start_V = float(trace.across_V[begin]) if begin > stretch.first else float(volts[0])
         groups = np.array_split(rows, min(rows.size, _MOST_ROWS))
         self.count = len(groups)
         weight = [trace.interval_s[group] for group in groups]
