@@ -31,7 +31,7 @@ class Refusal(Exception):
 
     def __init__(self, code, data=None):
         """Take the code and a word, or None."""
-        Exception.__init__(self, code, data)
+        super().__init__(code, data)
         self.code = code
         self.data = data
 

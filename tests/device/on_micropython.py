@@ -15,6 +15,7 @@ from dwellbox.encode import Line, text
 from dwellbox.ring import Ring
 from dwellbox.rpc import judge
 from dwellbox.scan import NOT_WHOLE, Scanner
+from dwellbox.wire import Refusal
 
 
 class Sink:
@@ -118,11 +119,21 @@ def check_judge():
     return len(JUDGE)
 
 
+def check_refusal():
+    """An exception class of our own over MicroPython's native one must keep its members."""
+    try:
+        raise Refusal(-32011, "why")
+    except Refusal as refusal:
+        assert (refusal.code, refusal.data) == (-32011, "why")
+    return 1
+
+
 for name, check in (
     ("crc", check_crc),
     ("scan", check_scan),
     ("encode", check_encode),
     ("rows", check_rows),
     ("judge", check_judge),
+    ("refusal", check_refusal),
 ):
     print(name, check())

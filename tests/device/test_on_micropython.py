@@ -14,5 +14,6 @@ def test_vectors() -> None:
         "encode": len(ENCODE),
         "rows": len(ROWS),
         "judge": len(JUDGE),
+        "refusal": 1,
     }
     assert said == {name: str(count) for name, count in counts.items()}

@@ -23,7 +23,7 @@ _BOARD = Path(__file__).resolve().parent / "micropython"
 _MOST_IN = 32  # bytes a period, what the firmware takes
 _MOST_OUT = 64
 _REPLY = struct.Struct("<IBhhBBB")
-_ASK = struct.Struct("<BiBBbbB")
+_ASK = struct.Struct("<BiBBbbBB")
 _WORD = struct.Struct("<BH")
 
 
@@ -44,16 +44,19 @@ class LockstepBox(EmulatedBox):
 
     heap = "320K"  # compiling the sources on a 64-bit build takes twice what the board needs; the heap benchmark is stricter
     main = "main.py"
+    board = _BOARD  # where dwellboard lies
+    firmware: Path | None = None  # None: the firmware's sources; else a folder of compiled ones
 
     def start(self) -> None:
         """Start the interpreter on the firmware's folder and go on to its first period."""
         child_in, self._write = os.pipe()
         self._read, child_out = os.pipe()
-        environment = {**os.environ, "MICROPYPATH": f".frozen:{_BOARD}:{assets.device()}"}
+        firmware = self.firmware or assets.device()
+        environment = {**os.environ, "MICROPYPATH": f".frozen:{self.board}:{firmware}"}
         command = ["sh", "-c", f'exec "$0" "$@" 3<&{child_in} 4>&{child_out}', interpreter(), "-X", f"heapsize={self.heap}"]
         self.process = subprocess.Popen(
             [*command, str(self.main)],
-            cwd=assets.device(),
+            cwd=firmware,
             env=environment,
             pass_fds=(child_in, child_out),
             stdin=subprocess.DEVNULL,
@@ -84,16 +87,14 @@ class LockstepBox(EmulatedBox):
 
     def _reply(self) -> None:
         world, link = self.world, self.link
-        taken = bytes(link.into[:_MOST_IN])
-        for _ in taken:
-            link.get()
+        offered = bytes(link.into[:_MOST_IN])  # what the firmware leaves is offered again
         zero, one = world.codes
         none = (zero == NO_CODE) | (one == NO_CODE) << 1
         zero = 0 if zero == NO_CODE else zero
         one = 0 if one == NO_CODE else one
         room = min(_MOST_OUT, link.room())
-        head = _REPLY.pack(world.clock_ms(), world.inputs, zero, one, room, len(taken), none)
-        self._to.write(head + taken)
+        head = _REPLY.pack(world.clock_ms(), world.inputs, zero, one, room, len(offered), none)
+        self._to.write(head + offered)
 
     def _words(self) -> None:
         """Serve rare exchanges until a period's frame comes; the first one of a start has no world to advance yet."""
@@ -110,7 +111,9 @@ class LockstepBox(EmulatedBox):
                 return
 
     def _period(self) -> None:
-        bits, mv, pumps, feeds, zero, one, count = _ASK.unpack(self._from.read(_ASK.size))
+        bits, mv, pumps, feeds, zero, one, count, taken = _ASK.unpack(self._from.read(_ASK.size))
+        for _ in range(taken):
+            self.link.get()
         for byte in self._from.read(count) if count else b"":
             self.link.put(byte)
         self.outputs, self.supply_mv = bits, mv

@@ -9,7 +9,7 @@ import struct
 from dwellbox.board import Board
 
 _OUT_ROOM = 64
-_ASK = "<BBiBBbbB"  # kind, outputs, supply_mv, pumps, feeds, conversion 0, conversion 1, bytes out
+_ASK = "<BBiBBbbBB"  # kind, outputs, supply_mv, pumps, feeds, conversion 0, conversion 1, bytes out, bytes taken
 _ASK_SIZE = struct.calcsize(_ASK)
 _REPLY_SIZE = 12  # now_ms u32, inputs u8, codes 2 x i16, room u8, bytes in u8, which codes are none u8
 
@@ -60,6 +60,7 @@ class PipeBoard(Board):
         ask[8] = conversion[0] & 255
         ask[9] = conversion[1] & 255
         ask[10] = self._out
+        ask[11] = self._at
         self._to.write(self._asks[self._out])
         self._pumps = 0
         self._feeds = 0
