@@ -12,7 +12,7 @@ from __future__ import annotations
 
 import secrets
 from dataclasses import dataclass
-from math import ceil
+from math import ceil, isfinite
 from typing import Any
 
 from dwellbench.errors import UsageError
@@ -184,7 +184,7 @@ def target_volts(part: Part, place: Place | None, ratings: Ratings, volts: float
 
 def _checked(part: Part, ratings: Ratings, volts: float, whose: str) -> tuple[float, str]:
     """A voltage that somebody named: it must fit the box and the part."""
-    if volts < _LEAST_V:
+    if not isfinite(volts) or volts < _LEAST_V:
         raise UsageError(f"{volts:g} V is no test voltage.", remedy=f"Give at least {_LEAST_V:g} V.")
     if volts > ratings.volts_V:
         raise UsageError(
