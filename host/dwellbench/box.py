@@ -89,7 +89,7 @@ class Box:
         try:
             self.identity = self._identify()
         except BaseException:
-            self._link.close()
+            self.close()
             raise
 
     def __enter__(self) -> Box:
@@ -101,6 +101,8 @@ class Box:
     def close(self) -> None:
         """Let the link go. The box itself goes on guarding."""
         self._link.close()
+        if self._log is not None:
+            self._log.close()
 
     @property
     def ratings(self) -> Ratings:

@@ -52,10 +52,14 @@ class LockstepBox(EmulatedBox):
         child_in, self._write = os.pipe()
         self._read, child_out = os.pipe()
         firmware = self.firmware or assets.device()
-        environment = {**os.environ, "MICROPYPATH": f".frozen:{self.board}:{firmware}"}
-        command = ["sh", "-c", f'exec "$0" "$@" 3<&{child_in} 4>&{child_out}', interpreter(), "-X", f"heapsize={self.heap}"]
+        environment = {
+            **os.environ,
+            "MICROPYPATH": f".frozen:{self.board}:{firmware}",
+            "DWELLBOARD_IN": str(child_in),
+            "DWELLBOARD_OUT": str(child_out),
+        }
         self.process = subprocess.Popen(
-            [*command, str(self.main)],
+            [interpreter(), "-X", f"heapsize={self.heap}", str(self.main)],
             cwd=firmware,
             env=environment,
             pass_fds=(child_in, child_out),

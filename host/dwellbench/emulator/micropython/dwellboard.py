@@ -1,9 +1,10 @@
-"""The firmware's board under a desktop MicroPython, in lockstep with the emulated world over two pipes (descriptors 3 and 4).
+"""The firmware's board under a desktop MicroPython, in lockstep with the emulated world over two pipes (their descriptors' numbers are in the environment).
 
 One exchange a period: outputs and bytes out, readings and bytes in. The bytes of the link travel inside the exchange, so that the
 same seed gives the same traffic. Ticks wrap at 2**30 as on the board. Other words (flash, scratch) are exchanges of their own.
 """
 
+import os
 import struct
 
 from dwellbox.board import Board
@@ -18,8 +19,8 @@ class PipeBoard(Board):
     """Holds a period's calls until `wait_period` exchanges them. Nothing there allocates."""
 
     def __init__(self):
-        self._in = open(3, "rb")
-        self._to = open(4, "wb")
+        self._in = open(int(os.getenv("DWELLBOARD_IN")), "rb")
+        self._to = open(int(os.getenv("DWELLBOARD_OUT")), "wb")
         self._ask = bytearray(_ASK_SIZE + _OUT_ROOM)
         self._asked = memoryview(self._ask)
         self._reply = bytearray(_REPLY_SIZE)
