@@ -14,9 +14,12 @@ FAULT = const(2)
 DONE = const(3)
 LOG = const(4)
 
-# kind, stage, shunt | range << 2 | vrange << 3, flags, t, sv, si, vmin, vmax, imin, imax, vs, temp, nv, ni, iclip
-_FORM = "<BBBBIiihhhhhhBBB"
+# kind | vrange << 3 | stage << 4, shunt | range << 2 | flags << 4, t, sv, si, vmin, vmax, imin, imax, vs, temp,
+# nv | ni << 5 | iclip << 10: a window has at most 20 readings, and two minutes of rows are the largest thing on the heap
+_FORM = "<BBIiihhhhhhH"
 _SIZE = struct.calcsize(_FORM)
+_KIND = const(7)
+_COUNT = const(31)
 _CHUNK = const(64)  # rows a piece: the heap need not have 40 kB in one place
 _NOTES = const(120)  # events that are not samples: a run makes about a dozen
 
@@ -47,14 +50,14 @@ class Ring:
     def sample(
         self, t, stage, shunt, range_, nv, sv, vmin, vmax, ni, si, imin, imax, iclip, vs, temp, flags, vrange
     ):
-        """Keep one window. Allocates nothing."""
+        """Keep one window; its counts are at most 31 each. Allocates nothing."""
         n = self._turn()
         rows = self._pieces[n % self.capacity // _CHUNK]
         at = n % _CHUNK * _SIZE
-        packed = shunt | range_ << 2 | vrange << 3
-        struct.pack_into(
-            _FORM, rows, at, SAMPLE, stage, packed, flags, t, sv, si, vmin, vmax, imin, imax, vs, temp, nv, ni, iclip
-        )
+        first = SAMPLE | vrange << 3 | stage << 4
+        second = shunt | range_ << 2 | flags << 4
+        counts = nv | ni << 5 | iclip << 10
+        struct.pack_into(_FORM, rows, at, first, second, t, sv, si, vmin, vmax, imin, imax, vs, temp, counts)
 
     def state(self, t, state, stage, why):
         """Keep a move. Allocates."""
@@ -82,7 +85,7 @@ class Ring:
 
     def kind(self, n):
         """Return the kind of a kept event."""
-        return self._piece(n)[n % _CHUNK * _SIZE]
+        return self._piece(n)[n % _CHUNK * _SIZE] & _KIND
 
     def note(self, n):
         """Return (t, words) of an event that is not a sample, or None when its words are gone."""
@@ -92,24 +95,26 @@ class Ring:
         """Unpack a sample's numbers after its `n` into the list `into` (17 places). Allocates nothing that stays."""
         rows = self._piece(n)
         at = n % _CHUNK * _SIZE
-        packed = rows[at + 2]
-        into[0] = _word(rows, at + 4) | _word(rows, at + 6) << 16
-        into[1] = rows[at + 1]
-        into[2] = packed & 3
-        into[3] = packed >> 2 & 1
-        into[4] = rows[at + 28]
-        into[5] = _long(rows, at + 8)
-        into[6] = _short(rows, at + 16)
-        into[7] = _short(rows, at + 18)
-        into[8] = rows[at + 29]
-        into[9] = _long(rows, at + 12)
-        into[10] = _short(rows, at + 20)
-        into[11] = _short(rows, at + 22)
-        into[12] = rows[at + 30]
-        into[13] = _short(rows, at + 24)
-        into[14] = _short(rows, at + 26)
-        into[15] = rows[at + 3]
-        into[16] = packed >> 3 & 1
+        first = rows[at]
+        second = rows[at + 1]
+        counts = _word(rows, at + 26)
+        into[0] = _word(rows, at + 2) | _word(rows, at + 4) << 16
+        into[1] = first >> 4
+        into[2] = second & 3
+        into[3] = second >> 2 & 1
+        into[4] = counts & _COUNT
+        into[5] = _long(rows, at + 6)
+        into[6] = _short(rows, at + 14)
+        into[7] = _short(rows, at + 16)
+        into[8] = counts >> 5 & _COUNT
+        into[9] = _long(rows, at + 10)
+        into[10] = _short(rows, at + 18)
+        into[11] = _short(rows, at + 20)
+        into[12] = counts >> 10
+        into[13] = _short(rows, at + 22)
+        into[14] = _short(rows, at + 24)
+        into[15] = second >> 4
+        into[16] = first >> 3 & 1
 
 
 def _word(buffer, at):

@@ -106,7 +106,7 @@ def test_the_longest_sample_line_fits() -> None:
     """Every number of a row at its longest, `n` at 30 bits, a seven-digit boot."""
     ring = Ring(64)
     ring.n = ring.first = 2**30 - 1
-    longest = (2**30 - 1, 11, 2, 1, 255, -8355840, -32768, -32768, 255, -8355840, -32768, -32768, 255, -32768, -32768, 15, 1)
+    longest = (2**30 - 1, 11, 2, 1, 31, -1015808, -32768, -32768, 31, -1015808, -32768, -32768, 31, -32768, -32768, 15, 1)
     ring.sample(*longest)
     line = Line(9999999)
     line.begin_sample(ring, 2**30 - 1)

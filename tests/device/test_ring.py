@@ -10,13 +10,13 @@ from wire_vectors import ROWS
 from dwellbox.codes import DWELL, FAULT_NONE, ST_DWELL
 from dwellbox.ring import DONE, FAULT, LOG, SAMPLE, STATE, Ring
 
-_byte = st.integers(0, 255)
+_count = st.integers(0, 31)
 _short = st.integers(-32768, 32767)
-_sum = st.integers(-255 * 32768, 255 * 32767)
+_sum = st.integers(-31 * 32768, 31 * 32767)
 _bit = st.integers(0, 1)
 _rows = st.tuples(
-    st.integers(0, 2**30 - 1), st.integers(0, 11), st.integers(0, 2), _bit, _byte, _sum, _short, _short,
-    _byte, _sum, _short, _short, _byte, _short, _short, st.integers(0, 15), _bit,
+    st.integers(0, 2**30 - 1), st.integers(0, 11), st.integers(0, 2), _bit, _count, _sum, _short, _short,
+    _count, _sum, _short, _short, _count, _short, _short, st.integers(0, 15), _bit,
 )  # fmt: skip
 
 
