@@ -13,7 +13,7 @@ from pathlib import Path
 from typing import Any, Protocol
 
 from dwellbench.box import Box
-from dwellbench.errors import DwellbenchError, StoppedError, UsageError
+from dwellbench.errors import DwellbenchError, LinkError, StoppedError, UsageError
 from dwellbench.judge import judge
 from dwellbench.limits.decide import Thresholds
 from dwellbench.limits.place import Place
@@ -23,7 +23,7 @@ from dwellbench.outcome import Outcome
 from dwellbench.part import Part
 from dwellbench.plan import Plan
 from dwellbench.records import RunWriter, Store
-from dwellbench.run import Run
+from dwellbench.run import Run, stopped, unproven
 from dwellbench.wire.core import Notice
 from dwellbench.wire.wire_log import WireLog
 
@@ -86,7 +86,10 @@ def test_part(
             watcher.began(plan, run)
         _follow(run, writer, watcher)
     except BaseException as error:
-        _interrupted(writer, run, error)
+        reason = _made_safe(run, error)
+        _interrupted(writer, run, reason)
+        if reason is not error:
+            raise reason from None
         raise
     outcome = _judged(run, part, place, grade, calibration, plan, thresholds, esr_ohm)
     outcome = outcome.stamped(**_stamps(box, run, document, role, began, writer))
@@ -140,6 +143,19 @@ def record(writer: RunWriter, notice: Notice) -> None:
         writer.rows(notice.params["rows"])
     else:
         writer.event(notice.method, notice.params)
+
+
+def _made_safe(run: Run | None, error: BaseException) -> BaseException:
+    """Whatever happened on this side while the part was charged: the run is stopped and discharge awaited first."""
+    if run is None or run.over or isinstance(error, (LinkError, StoppedError)):
+        return error
+    try:
+        run.stop()
+    except (DwellbenchError, KeyboardInterrupt) as second:
+        if isinstance(second, KeyboardInterrupt):
+            return unproven()
+        return second
+    return stopped() if isinstance(error, KeyboardInterrupt) else error
 
 
 def _interrupted(writer: RunWriter | None, run: Run | None, error: BaseException) -> None:

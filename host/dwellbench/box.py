@@ -27,7 +27,7 @@ from dwellbench.run import Run
 from dwellbench.wire.codes import MAJOR
 from dwellbench.wire.core import Answer, Client, Junk, Notice, Refusal
 from dwellbench.wire.link import Link, open_link
-from dwellbench.wire.said import refused
+from dwellbench.wire.said import fault, refused
 from dwellbench.wire.stream import Stream
 from dwellbench.wire.wire_log import WireLog
 
@@ -37,6 +37,7 @@ HELLO_S = 3.0
 KEEPALIVE_S = 0.5  # a quarter of the silence that ends a run
 RECONNECT_S = 30.0  # what the box recorded stays for two minutes; half a minute of trying, then the user is told
 RETRY_S = 0.25
+_POWERED = ("charge", "dwell", "measure", "form")
 WAKE_S = 180.0  # proving discharge after power-up takes half a minute at most
 
 
@@ -219,13 +220,16 @@ class Box:
             self._receive(left)
 
     def settle(self, seconds: float = WAKE_S) -> dict[str, Any]:
-        """Wait until the box is at rest with the part discharged. FaultError when it is locked out or does not get there."""
+        """Wait until the box is at rest with the part discharged. FaultError when it is locked out or does not get there.
+
+        A run that an earlier host left behind is stopped first: asking how it goes would keep it alive.
+        """
+        if self.status()["state"] in _POWERED:
+            self.abort()
         status = self.wait_for(lambda now: now["state"] in ("rest", "lockout"), seconds)
         if status is None:
             raise FaultError("The box has not proven the part discharged.", remedy="Leave the lid closed and wait.")
         if status["state"] == "lockout":
-            from dwellbench.wire.said import fault
-
             raise fault(status["fault"] or "not_discharged")
         return status
 

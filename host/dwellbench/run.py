@@ -116,12 +116,8 @@ class Run:
         try:
             self.stop()
         except KeyboardInterrupt:
-            raise StoppedError(
-                "Stopped without waiting for the box.",
-                remedy="The box goes on by itself: it empties the part and keeps the lid locked until that is proven.",
-                proven=False,
-            ) from None
-        raise StoppedError("Stopped by the user; the part is discharged.", remedy="", proven=True)
+            raise unproven() from None
+        raise stopped()
 
     # -- what came of it
 
@@ -152,4 +148,18 @@ def _restarted() -> FaultError:
         "The box was restarted during the run.",
         remedy="It proves the part discharged by itself; see: dwellbench box.",
         fault="reset_in_run",
+    )
+
+
+def stopped() -> StoppedError:
+    """The user stopped it, and the part is discharged."""
+    return StoppedError("Stopped by the user; the part is discharged.", remedy="", proven=True)
+
+
+def unproven() -> StoppedError:
+    """The user would not wait."""
+    return StoppedError(
+        "Stopped without waiting for the box.",
+        remedy="The box goes on by itself: it empties the part and keeps the lid locked until that is proven.",
+        proven=False,
     )
