@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from dwellbench.errors import UsageError
 from dwellbench.limits.place import Place
 from dwellbench.part import Part
@@ -68,7 +69,13 @@ def test_times_and_grades_that_are_none(dwell: float, grade: str) -> None:
 
 
 @pytest.mark.parametrize(
-    ("part", "grade", "dwell", "bleed"), [(FILM, "new", 60.0, 10.0), (CAN, "new", 120.0, 12.0), (CAN, "period", 300.0, 30.0), (CAN, "aged", 300.0, 30.0)]
+    ("part", "grade", "dwell", "bleed"),
+    [
+        (FILM, "new", 60.0, 10.0),
+        (CAN, "new", 120.0, 12.0),
+        (CAN, "period", 300.0, 30.0),
+        (CAN, "aged", 300.0, 30.0),
+    ],
 )
 def test_usual_times(part: Part, grade: str, dwell: float, bleed: float) -> None:
     plan = Plan.make(part, None, BOX, grade=grade)

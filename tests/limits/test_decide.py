@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import pytest
-from dwellbench.errors import UsageError
-from dwellbench.limits.decide import Thresholds, conformity
 from hypothesis import given
 from hypothesis import strategies as st
+
+from dwellbench.errors import UsageError
+from dwellbench.limits.decide import Thresholds, conformity
 
 NUMBERS = st.floats(-1e6, 1e6)
 DOUBTS = st.floats(1e-6, 1e6)

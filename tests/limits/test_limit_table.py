@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from dwellbench.limits.limit import CURRENT_SHAPES, INSULATION, STATUSES, TOTAL_CURRENT, UNSURE
 from dwellbench.limits.table import LIMITS, limits_for
 from dwellbench.limits.temperature import WARMING, warmed
@@ -11,7 +12,17 @@ from dwellbench.part import Part
 from dwellbench.plan import GRADES
 
 KINDS = (
-    *("paper", "polyester", "polypropylene", "polystyrene", "polycarbonate", "film", "mica", "glass", "vacuum"),
+    *(
+        "paper",
+        "polyester",
+        "polypropylene",
+        "polystyrene",
+        "polycarbonate",
+        "film",
+        "mica",
+        "glass",
+        "vacuum",
+    ),
     *("ceramic_1", "ceramic_2", "ceramic", "electrolytic", "tantalum"),
 )
 

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
 from dwellbench.errors import UsageError
 from dwellbench.limits.demands import VISIBLE_OHM, demand, grid_shift_V, least_ohm, most_series_ohm
 from dwellbench.limits.place import Place, ohms, short_ohms, volts
 from dwellbench.limits.places import BY_ID, FILTER, GRID_SHIFT, KINDS, NEVER, PULSE, SERIES_SHARE
 from dwellbench.part import Part
-from hypothesis import given
-from hypothesis import strategies as st
 
 FILM = Part("made", capacitance_F=1e-7, rated_V=630.0, rated_kind="dc", dielectric="film")
 CAN = Part("made", capacitance_F=20e-6, rated_V=450.0, rated_kind="dc", dielectric="electrolytic", polar=True)
@@ -17,7 +18,16 @@ CAN = Part("made", capacitance_F=20e-6, rated_V=450.0, rated_kind="dc", dielectr
 
 @pytest.mark.parametrize(
     ("text", "value"),
-    [("470k", 470e3), ("4k7", 4700.0), ("2.2M", 2.2e6), ("2M2", 2.2e6), ("470000", 470e3), ("1Mohm", 1e6), ("100R", 100.0), ("1G", 1e9)],
+    [
+        ("470k", 470e3),
+        ("4k7", 4700.0),
+        ("2.2M", 2.2e6),
+        ("2M2", 2.2e6),
+        ("470000", 470e3),
+        ("1Mohm", 1e6),
+        ("100R", 100.0),
+        ("1G", 1e9),
+    ],
 )
 def test_resistances(text: str, value: float) -> None:
     assert ohms(text) == pytest.approx(value)
@@ -62,7 +72,10 @@ def test_no_particular_place(text: str) -> None:
     assert Place.parse(text) is None
 
 
-@pytest.mark.parametrize("text", ["cuopling", "coupling@", "coupling@hot", "coupling@310V/470q", "coupling@-5V", "@310V", "coupling@0V"])
+@pytest.mark.parametrize(
+    "text",
+    ["cuopling", "coupling@", "coupling@hot", "coupling@310V/470q", "coupling@-5V", "@310V", "coupling@0V"],
+)
 def test_roles_that_are_none(text: str) -> None:
     with pytest.raises(UsageError) as caught:
         Place.parse(text)

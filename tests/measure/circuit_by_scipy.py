@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
-from dwellbench.measure.trace import Trace
 from scipy.integrate import solve_ivp
+
+from dwellbench.measure.trace import Trace
 
 CHARGE_OHM, DIVIDER_OHM = 400e3, 100.1e6
 
@@ -48,7 +50,7 @@ def rows(setup: Setup) -> dict[str, np.ndarray]:
     edges = np.arange(0.0, s.end_s + 1e-9, s.interval_s)
     kinks = [0.0, s.begin_s, s.begin_s + s.supply_V / s.slew_V_per_s, s.end_s]
     marks, state, found = [], np.array([s.start_V, 0.0, 0.0, 0.0]), []
-    for begin, end in zip(kinks, kinks[1:], strict=False):
+    for begin, end in pairwise(kinks):
         inside = edges[(edges >= begin) & (edges < end)]
         times = np.unique(np.concatenate((inside, [end])))
         solved = solve_ivp(slope, (begin, end), state, t_eval=times, method="LSODA", rtol=1e-10, atol=1e-13)
@@ -59,7 +61,12 @@ def rows(setup: Setup) -> dict[str, np.ndarray]:
     y = np.column_stack([*found, state[:, None]])
     keep = np.array([np.argmin(np.abs(at - edge)) for edge in edges])
     means = np.diff(y[1:, keep], axis=1) / s.interval_s
-    return {"t_s": edges[1:], "v_part_V": means[0] + means[1] * s.shunt_ohm, "i_shunt_A": means[1], "v_supply_V": means[2]}
+    return {
+        "t_s": edges[1:],
+        "v_part_V": means[0] + means[1] * s.shunt_ohm,
+        "i_shunt_A": means[1],
+        "v_supply_V": means[2],
+    }
 
 
 def trace_of(setup: Setup, stage: str = "charge", **header: object) -> Trace:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+
 from dwellbench.errors import TraceError, UsageError
 from dwellbench.measure.calibrate import calibrate, part_temperature_C
 from dwellbench.measure.calibration import Calibration

@@ -2,18 +2,14 @@
 
 from __future__ import annotations
 
-import sys
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from tests.measure.circuit_by_scipy import Setup, trace_of
 
-sys.path.insert(0, str(Path(__file__).parent))
-
-from circuit_by_scipy import Setup, trace_of
 from dwellbench.measure.charge import Leaks, Stretch, charge_balance, low_volts, stretch_of
 from dwellbench.measure.curve import Curve, fit_curve
 from dwellbench.measure.estimate import Estimate

@@ -7,6 +7,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+
 from dwellbench.errors import TraceError
 from dwellbench.judge import analyse
 from dwellbench.measure.csv_read import parse_csv, read_csv
@@ -15,7 +16,11 @@ from dwellbench.measure.trace import Trace
 
 DATA = Path(__file__).parent / "data"
 HEAD = "t_s,stage,shunt_ohm,v_part_V,i_shunt_A,v_supply_V"
-ROWS = ["0.1,charge,560,100.0,1e-4,400.0", "0.2,charge,560,200.0,1e-5,400.0", "0.3,dwell,560,399.0,1e-8,400.0"]
+ROWS = [
+    "0.1,charge,560,100.0,1e-4,400.0",
+    "0.2,charge,560,200.0,1e-5,400.0",
+    "0.3,dwell,560,399.0,1e-8,400.0",
+]
 
 
 def text(*rows: str, head: str = HEAD, before: str = "") -> str:
@@ -34,7 +39,15 @@ def test_what_is_left_out_has_its_stated_meaning() -> None:
     assert trace.clipped.tolist() == [0.0, 0.0, 0.0]
     assert set(trace.range_V) == {1.024}
     assert trace.u_offset_A == pytest.approx(0.5 * 1.024 / 32768 / 560)
-    assert trace.assumed == ("charge_ohm", "divider_ohm", "bleed_ohm", "fixture_ohm", "temperature_C", "u_gain_v", "u_gain_i")
+    assert trace.assumed == (
+        "charge_ohm",
+        "divider_ohm",
+        "bleed_ohm",
+        "fixture_ohm",
+        "temperature_C",
+        "u_gain_v",
+        "u_gain_i",
+    )
     assert np.isnan(trace.v_min_V).all()
 
 
@@ -79,7 +92,11 @@ def test_the_part_sees_the_node_less_the_shunt() -> None:
         (text(*[row + ",0.5" for row in ROWS], head=HEAD + ",clipped"), None, "clipped"),
         (text(*[row + ",0" for row in ROWS], head=HEAD + ",range_V"), 2, "range_V"),
         (text(*[row + ",1" for row in ROWS], head=HEAD + ",t_s"), 1, "twice"),
-        (text(*[row.replace("charge", "x").replace("dwell", "y") for row in ROWS]), None, "nothing to measure"),
+        (
+            text(*[row.replace("charge", "x").replace("dwell", "y") for row in ROWS]),
+            None,
+            "nothing to measure",
+        ),
         (text(*ROWS, before="# charge_ohm = large\n"), 1, "large"),
         (text(*ROWS, before="# u_gain_v = -1\n"), 1, "u_gain_v"),
         (text(*ROWS, before="# fixture_ohm = 0\n"), 1, "fixture_ohm"),

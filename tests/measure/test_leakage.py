@@ -6,8 +6,9 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+
 from dwellbench.measure.events import events
-from dwellbench.measure.leakage import bursts, dwell_begin_s, read_leakage
+from dwellbench.measure.leakage import Leakage, bursts, dwell_begin_s, read_leakage
 from dwellbench.measure.ratios import recovery_percent, resistance_ratio
 from dwellbench.measure.settled import settled
 from dwellbench.measure.trace import Trace, circuit_of
@@ -48,7 +49,7 @@ def middle(size: int) -> np.ndarray:
     return 0.1 * np.arange(1, size + 1) - 0.05
 
 
-def read(trace: Trace, farads: float | None = 1e-7, at_s: float | None = None):  # noqa: ANN201
+def read(trace: Trace, farads: float | None = 1e-7, at_s: float | None = None) -> Leakage | None:
     circuit = circuit_of(trace)
     return read_leakage(trace, circuit, settled(trace, circuit, farads), farads, at_s)
 

@@ -4,9 +4,10 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from dwellbench.measure.least_squares import least_squares, line
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
+from dwellbench.measure.least_squares import least_squares, line
 
 CHANCE = np.random.default_rng(7)
 
@@ -58,6 +59,10 @@ def test_residuals_larger_than_assumed_widen_the_doubt() -> None:
 
 
 def test_where_no_minimum_is_found_there_is_none() -> None:
-    assert least_squares(lambda p: np.array([np.exp(-p[0]), np.exp(-2 * p[0])]), np.array([0.0])) is None or True
+    falling = least_squares(lambda p: np.array([np.exp(-p[0]), np.exp(-2 * p[0])]), np.array([0.0]), most_steps=5)
+    assert falling is None
+
+
+def test_parameters_that_cannot_be_told_apart_have_no_doubt_to_trust() -> None:
     singular = least_squares(lambda p: np.array([p[0] + p[1] - 1.0, p[0] + p[1] - 2.0]), np.array([0.0, 0.0]))
     assert singular is None or not np.isfinite(singular.covariance).all() or singular.u(0) > 1e3

@@ -6,13 +6,18 @@ import json
 from pathlib import Path
 
 import pytest
+
 from dwellbench.measure.csv_read import read_csv
 from dwellbench.measure.estimates import Estimates, estimate
 from dwellbench.quantity import Quantity
 
 DATA = Path(__file__).parent / "data"
 TRUTH: dict[str, dict[str, float]] = json.loads((DATA / "truth.json").read_text("utf-8"))
-DIELECTRIC = {"paper_2M": "paper", "electrolytic_forming": "electrolytic", "electrolytic_sound": "electrolytic"}
+DIELECTRIC = {
+    "paper_2M": "paper",
+    "electrolytic_forming": "electrolytic",
+    "electrolytic_sound": "electrolytic",
+}
 DIELECTRIC |= {"mica_100p": "mica", "clipped": "paper"}
 MEASURED = sorted(set(TRUTH) - {"open_lead"})
 

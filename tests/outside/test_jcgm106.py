@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+
 from dwellbench.limits.decide import Thresholds, conformity, guard_band, phi
 from dwellbench.measure.least_squares import line
 
@@ -28,7 +29,8 @@ def test_lower_limit_example() -> None:
 
 
 @pytest.mark.parametrize(
-    ("accept", "z"), [(0.80, 0.8416), (0.90, 1.2816), (0.95, 1.6449), (0.975, 1.96), (0.99, 2.3263), (0.999, 3.0902)]
+    ("accept", "z"),
+    [(0.80, 0.8416), (0.90, 1.2816), (0.95, 1.6449), (0.975, 1.96), (0.99, 2.3263), (0.999, 3.0902)],
 )
 def test_guard_band(accept: float, z: float) -> None:
     """w = z u; quantiles of the standard normal, any table. A reading on the guarded limit has exactly that probability."""

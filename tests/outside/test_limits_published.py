@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from dwellbench.limits.demands import demand, grid_shift_V, least_ohm
 from dwellbench.limits.limit import INSULATION, Limit, at_most_A
 from dwellbench.limits.place import Place
@@ -14,7 +15,14 @@ BY_ID = {limit.id: limit for limit in LIMITS}
 
 
 def electrolytic(microfarads: float, rated_V: float) -> Part:
-    return Part("made", capacitance_F=microfarads * 1e-6, rated_V=rated_V, rated_kind="dc", dielectric="electrolytic", polar=True)
+    return Part(
+        "made",
+        capacitance_F=microfarads * 1e-6,
+        rated_V=rated_V,
+        rated_kind="dc",
+        dielectric="electrolytic",
+        polar=True,
+    )
 
 
 def ruling(part: Part, grade: str) -> Limit:
@@ -49,7 +57,18 @@ def test_jan_c_62(microfarads: float, rated_V: float, milliamperes: float) -> No
 
 
 @pytest.mark.parametrize(
-    ("rated_V", "k"), [(3, 0.01), (100, 0.01), (101, 0.02), (250, 0.02), (251, 0.025), (350, 0.025), (351, 0.04), (450, 0.04), (500, 0.04)]
+    ("rated_V", "k"),
+    [
+        (3, 0.01),
+        (100, 0.01),
+        (101, 0.02),
+        (250, 0.02),
+        (251, 0.025),
+        (350, 0.025),
+        (351, 0.04),
+        (450, 0.04),
+        (500, 0.04),
+    ],
 )
 def test_jan_c_62_steps(rated_V: float, k: float) -> None:
     """The k table, repeated in a restorers' mailing list of 1999, there written to 500 V."""

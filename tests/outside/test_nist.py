@@ -9,6 +9,7 @@ from collections.abc import Callable, Sequence
 
 import numpy as np
 import pytest
+
 from dwellbench.measure.least_squares import Fit, least_squares
 
 Model = Callable[[np.ndarray, np.ndarray], np.ndarray]
@@ -47,7 +48,12 @@ def test_misra1a(start: tuple[float, float]) -> None:
 
 def test_boxbod() -> None:
     """NIST StRD BoxBOD, higher difficulty: the same model with six points; the nearer published start."""
-    found = fitted(lambda b, x: b[0] * (1.0 - np.exp(-b[1] * x)), [1, 2, 3, 5, 7, 10], [109, 149, 149, 191, 213, 224], (100, 0.75))
+    found = fitted(
+        lambda b, x: b[0] * (1.0 - np.exp(-b[1] * x)),
+        [1, 2, 3, 5, 7, 10],
+        [109, 149, 149, 191, 213, 224],
+        (100, 0.75),
+    )
     agrees(found, (213.80940889, 0.54723748542), (12.354515176, 0.10455993237), 1168.0088766, 8)
 
 

@@ -48,9 +48,7 @@ def _short(case: Case) -> Ended:
     evidence = "The voltage did not rise although the whole current of the charge path flowed."
     if node_V is not None and amps:
         ohm = max(node_V * 1e-3 / (amps * 1e-9), 0.0)
-        evidence = (
-            f"{volts(node_V * 1e-3)} on the part while {si(amps * 1e-9, 'A')} flowed: about {si(ohm, 'ohm')}."
-        )
+        evidence = f"{volts(node_V * 1e-3)} on the part while {si(amps * 1e-9, 'A')} flowed: about {si(ohm, 'ohm')}."
     return Ended(UNFIT, "The part is shorted; it never took charge.", Finding("short", evidence), "scrap")
 
 
@@ -76,8 +74,7 @@ def _reversed(case: Case) -> Ended:
         "The voltage stalled at a few volts: the part is fitted the wrong way round, or shorted.",
         Finding("reversed", f"The voltage stalled{stood} while the whole current of the charge path flowed."),
         None,
-        "Check which lead is positive, fit it to the marked clip, test again; if it stalls again the part "
-        "is shorted: scrap.",
+        "Check which lead is positive, fit it to the marked clip, test again; if it stalls again the part is shorted: scrap.",
     )
 
 
@@ -85,10 +82,7 @@ def _value_off(case: Case) -> Ended:
     found, marked = look_F(case.trace), case.part.capacitance_F
     if found is None or not marked:
         return _interrupted(case)
-    evidence = (
-        f"{si(found, 'F')} at 20 V where {si(marked, 'F')} is marked "
-        f"({100.0 * (found / marked - 1.0):+.0f} %)."
-    )
+    evidence = f"{si(found, 'F')} at 20 V where {si(marked, 'F')} is marked ({100.0 * (found / marked - 1.0):+.0f} %)."
     finding = Finding("value_off", evidence)
     if case.part.doubts or found > marked:
         return Ended(
@@ -134,9 +128,7 @@ def _fault(case: Case) -> Ended:
     finding = Finding("fault", f"The run was ended by the fault {name}.")
     if special is not None:
         verdict, reason, also, following = special
-        return Ended(
-            verdict, reason, Finding(also, f"The run was ended by the fault {name}."), following, AGAIN
-        )
+        return Ended(verdict, reason, Finding(also, f"The run was ended by the fault {name}."), following, AGAIN)
     return Ended(UNDECIDED, f"Interrupted by the fault {name}; nothing was measured.", finding, None, AGAIN)
 
 

@@ -53,10 +53,7 @@ def _short(case: Case) -> Finding | None:
     if supply_V < 5.0 or across_V > _SHORT_V_SHARE * supply_V or amps < _SHORT_A_SHARE * most_A:
         return None
     ohm = max(across_V, 0.0) / amps
-    evidence = (
-        f"{volts(across_V)} on the part with {volts(supply_V)} supplied, {si(amps, 'A')} flows: about "
-        f"{si(ohm, 'ohm')}."
-    )
+    evidence = f"{volts(across_V)} on the part with {volts(supply_V)} supplied, {si(amps, 'A')} flows: about {si(ohm, 'ohm')}."
     return Finding("reversed" if case.part.polar and across_V > 1.0 else "short", evidence)
 
 
@@ -85,9 +82,7 @@ def _clipped(case: Case) -> Finding | None:
         return None
     share = 100.0 * float(clipped.sum()) / float(rows.sum())
     where = ", the end of the dwell among them" if late.any() else ""
-    return Finding(
-        "clipped", f"{share:.2g} % of the rows of charge and dwell clipped{where}; they are no readings."
-    )
+    return Finding("clipped", f"{share:.2g} % of the rows of charge and dwell clipped{where}; they are no readings.")
 
 
 def _unsettled(case: Case) -> Finding | None:
@@ -96,9 +91,7 @@ def _unsettled(case: Case) -> Finding | None:
         return None
     settles_s = case.estimates.settled.settles_s
     told = f"the shunt settles in {settles_s:.3g} s" if settles_s else "no settled rows stand at its end"
-    return Finding(
-        "unsettled", f"The dwell of {case.estimates.dwell_s or 0.0:.3g} s ended before a reading: {told}."
-    )
+    return Finding("unsettled", f"The dwell of {case.estimates.dwell_s or 0.0:.3g} s ended before a reading: {told}.")
 
 
 def _events(case: Case) -> Finding | None:
@@ -106,10 +99,7 @@ def _events(case: Case) -> Finding | None:
     if not events.count:
         return None
     largest = si(events.largest_A, "A")
-    evidence = (
-        f"{events.count} burst(s) while the voltage stood, the first at {events.first_s:.1f} s, up to "
-        f"{largest}."
-    )
+    evidence = f"{events.count} burst(s) while the voltage stood, the first at {events.first_s:.1f} s, up to {largest}."
     return Finding("intermittent" if events.count > 1 else "burst", evidence)
 
 
@@ -148,18 +138,14 @@ def _disagree(case: Case) -> Finding | None:
     if apart is None or balance is None or curve is None:
         return None
     told = f"charge balance {si(balance.value, 'F', 4)}, charging curve {si(curve.capacitance.value, 'F', 4)}"
-    return Finding(
-        "estimates_disagree", f"The two ways to the capacitance differ by {100.0 * apart:.2g} %: {told}."
-    )
+    return Finding("estimates_disagree", f"The two ways to the capacitance differ by {100.0 * apart:.2g} %: {told}.")
 
 
 def _sag(case: Case) -> Finding | None:
     supplied_V = case.supplied_V
     if case.test_V is None or supplied_V is None or case.test_V >= _SAG * supplied_V:
         return None
-    evidence = (
-        f"Only {volts(case.test_V)} of {volts(supplied_V)} stood on the part: its leak loads the charge path."
-    )
+    evidence = f"Only {volts(case.test_V)} of {volts(supplied_V)} stood on the part: its leak loads the charge path."
     return Finding("sag", evidence)
 
 
@@ -167,10 +153,7 @@ def _negative(case: Case) -> Finding | None:
     leak = case.leakage
     if leak is None or leak.through_A + 3.0 * leak.u_through_A >= 0.0:
         return None
-    evidence = (
-        f"The current reads {si(leak.through_A, 'A')}: a part that cools or a zero that moved, not "
-        "insulation."
-    )
+    evidence = f"The current reads {si(leak.through_A, 'A')}: a part that cools or a zero that moved, not insulation."
     return Finding("negative_current", evidence)
 
 
@@ -178,9 +161,7 @@ def _residual(case: Case) -> Finding | None:
     """A part that brought a charge along: before the first step of the supply."""
     residual_mv = case.trace.number("residual_mv") or 0.0
     first = np.flatnonzero(case.trace.rows("zero", "prove", "charge"))
-    start_V = (
-        float(case.trace.v_part_V[first[0]]) if first.size and case.trace.stage[first[0]] == "zero" else 0.0
-    )
+    start_V = float(case.trace.v_part_V[first[0]]) if first.size and case.trace.stage[first[0]] == "zero" else 0.0
     found_V = max(residual_mv / 1e3, start_V)
     if found_V <= _RESIDUAL_V:
         return None
@@ -218,9 +199,7 @@ def _fixture(case: Case, rows: list[Row]) -> Finding | None:
     of_limit = bounds and leak.fixture_A > _FIXTURE_SHARE * min(bounds)
     if not of_limit and leak.fixture_A < _FIXTURE_SHARE * leak.total_A:
         return None
-    return Finding(
-        "fixture", f"The empty fixture's share is {si(leak.fixture_A, 'A')} of {si(leak.total_A, 'A')} read."
-    )
+    return Finding("fixture", f"The empty fixture's share is {si(leak.fixture_A, 'A')} of {si(leak.total_A, 'A')} read.")
 
 
 def _value_off(case: Case, rows: list[Row]) -> Finding | None:
@@ -229,9 +208,7 @@ def _value_off(case: Case, rows: list[Row]) -> Finding | None:
     if row is None or row.p is None or found is None or not marked or case.thresholds.verdict(row.p) != UNFIT:
         return None
     off = 100.0 * (found.value / marked - 1.0)
-    return Finding(
-        "value_off", f"Found {si(found.value, 'F')}, {off:+.3g} % from the marked {si(marked, 'F')}."
-    )
+    return Finding("value_off", f"Found {si(found.value, 'F')}, {off:+.3g} % from the marked {si(marked, 'F')}.")
 
 
 def _below_series(case: Case, series: list[Row]) -> Finding | None:

@@ -47,8 +47,7 @@ def not_tested(case: Case) -> tuple[str, ...]:
 def notes(case: Case, found: list[Finding]) -> tuple[str, ...]:
     """Sentences beside the numbers."""
     told = [
-        f"Capacitance is a direct-current value: the charge for {volts(case.test_V)}, fast absorption "
-        "included.",
+        f"Capacitance is a direct-current value: the charge for {volts(case.test_V)}, fast absorption included.",
         f"Total current {seconds(case.estimates.dwell_s or 0.0)} after the voltage was in.",
     ]
     if case.part.dielectric in ("ceramic_2", "ceramic"):
@@ -60,14 +59,10 @@ def notes(case: Case, found: list[Finding]) -> tuple[str, ...]:
     told += _times(case)
     temperature = case.temperature_C
     if temperature is not None and not _NORMAL_C[0] <= temperature <= _NORMAL_C[1]:
-        told.append(
-            f"Measured at {temperature:.0f} C; the limits hold at 20 to 25 C and no published correction "
-            "is applied."
-        )
+        told.append(f"Measured at {temperature:.0f} C; the limits hold at 20 to 25 C and no published correction is applied.")
     if case.part.rated_kind == "ac":
         told.append(
-            "The marking is an AC rating; it is not turned into a DC one, and the verdict holds for the DC "
-            "voltage tested."
+            "The marking is an AC rating; it is not turned into a DC one, and the verdict holds for the DC voltage tested."
         )
     if case.esr_ohm is not None:
         told.append(f"Series resistance given by the user: {si(case.esr_ohm, 'ohm')}.")
@@ -79,14 +74,8 @@ def _times(case: Case) -> list[str]:
     if case.end == "finished":
         told.append("The dwell was cut short; parts that begin to leak late are not seen.")
     if case.part.dielectric in _ABSORBING:
-        told.append(
-            "A second test soon after reads less absorption; leave the part shorted five times as long as "
-            "it was held."
-        )
+        told.append("A second test soon after reads less absorption; leave the part shorted five times as long as it was held.")
     recovery = case.estimates.recovery_percent
     if recovery is not None:
-        told.append(
-            "Recovery belongs to this run's own times of charge, bleed and watching; compare only what was "
-            "taken alike."
-        )
+        told.append("Recovery belongs to this run's own times of charge, bleed and watching; compare only what was taken alike.")
     return told

@@ -30,6 +30,9 @@ _TAUS = 6.0
 _BEGUN = 0.002  # of the rise
 _MOST_ROWS = 48  # more are averaged together: what fits needs is a few rows in each time constant
 _LEAST_ROWS = 4
+_RAMP_ROWS = 3  # a step shows its beginning in one row
+_STILL = 1e-7  # a thousand times finer than anything the rows can say
+_MOST_STEPS = 60  # a charging that fits does so in ten
 _NOISE_CODE = 0.25  # of a row's mean: a code in a single reading, twenty readings
 _MODEL = 2e-4  # of the step: what ripple, drift and converter bends do to single rows
 _NO_SENSE = 1e60  # residual of parameters that no circuit has
@@ -55,7 +58,7 @@ def fit_curve(trace: Trace, circuit: Circuit, stretch: Stretch | None, guess_F: 
 
     `guess_F` is the charge balance's capacitance, where the search begins.
     """
-    if stretch is None or not guess_F or guess_F <= 0.0 or trace.ramp[stretch.first : stretch.last + 1].any():
+    if stretch is None or not guess_F or guess_F <= 0.0 or _ramped(trace, stretch):
         return None
     rows = _Rows(trace, circuit, stretch, guess_F)
     if rows.count < _LEAST_ROWS:
@@ -68,6 +71,16 @@ def fit_curve(trace: Trace, circuit: Circuit, stretch: Stretch | None, guess_F: 
         if best is not None and best.scatter < _GOOD:
             break
     return None if best is None else _curve(best, rows, circuit)
+
+
+def _ramped(trace: Trace, stretch: Stretch) -> bool:
+    """Whether the supply was still rising while the part charged: marked so, or read so."""
+    rows = slice(stretch.first, stretch.last + 1)
+    if trace.ramp[rows].any():
+        return True
+    share = trace.across_V[rows] / max(float(trace.across_V[rows].max()), 1e-9)
+    charging = trace.v_supply_V[rows][(share > 0.1) & (share < 0.9)]
+    return int(np.sum(charging < 0.9 * trace.v_supply_V[stretch.last])) >= _RAMP_ROWS
 
 
 class _Rows:
@@ -89,12 +102,8 @@ class _Rows:
         weight = [trace.interval_s[group] for group in groups]
         self.end_s = np.array([float(trace.t_s[group[-1]]) for group in groups])
         self.dt = np.array([float(w.sum()) for w in weight])
-        self.node_V = np.array(
-            [np.average(trace.v_part_V[g], weights=w) for g, w in zip(groups, weight, strict=True)]
-        )
-        self.amps = np.array(
-            [np.average(trace.i_shunt_A[g], weights=w) for g, w in zip(groups, weight, strict=True)]
-        )
+        self.node_V = np.array([np.average(trace.v_part_V[g], weights=w) for g, w in zip(groups, weight, strict=True)])
+        self.amps = np.array([np.average(trace.i_shunt_A[g], weights=w) for g, w in zip(groups, weight, strict=True)])
         box = reference_box()
         many = np.sqrt([group.size for group in groups])
         step_V = float(trace.v_part_V[stretch.last])
@@ -108,11 +117,7 @@ class _Rows:
 
 def _fit(rows: _Rows, circuit: Circuit, guess_F: float, slew_s_per_V: float) -> Fit | None:
     """Parameters: ln C, G, Vs, t0 (seconds), ln(Rc / nominal)."""
-    supply_V = (
-        float(rows.node_V[-1] + rows.amps[-1] * circuit.charge_ohm)
-        * circuit.charge_ohm
-        / circuit.thevenin_ohm
-    )
+    supply_V = float(rows.node_V[-1] + rows.amps[-1] * circuit.charge_ohm) * circuit.charge_ohm / circuit.thevenin_ohm
     u_rc = max(hypot(circuit.u_gain_v, circuit.u_gain_i), 0.01)
     gs = 1e-3 / circuit.charge_ohm
     floor_S = -1e-6
@@ -130,12 +135,11 @@ def _fit(rows: _Rows, circuit: Circuit, guess_F: float, slew_s_per_V: float) -> 
             circuit.charge_ohm * exp(p[4]),
             slew_s_per_V,
         )
-        return np.concatenate(
-            ((node_V - rows.node_V) / rows.u_V, (amps - rows.amps) / rows.u_A, [p[4] / u_rc])
-        )
+        return np.concatenate(((node_V - rows.node_V) / rows.u_V, (amps - rows.amps) / rows.u_A, [p[4] / u_rc]))
 
     start = np.array([0.0, 0.0, supply_V, rows.first_s - slew_s_per_V * supply_V / 2.0, 0.0])
-    return least_squares(residuals, start, np.array([1.0, gs, supply_V, max(rows.tau_s, 0.01), 1.0]))
+    scale = np.array([1.0, gs, supply_V, max(rows.tau_s, 0.01), 1.0])
+    return least_squares(residuals, start, scale, still=_STILL, most_steps=_MOST_STEPS)
 
 
 def charged(
@@ -162,9 +166,7 @@ def charged(
     return np.asarray(part_V + amps * rows.shunt_ohm), np.asarray(amps)
 
 
-def _integrals(
-    u: Floats, start_V: float, goal_V: float, supply_V: float, tau_s: float, rise_s: float
-) -> tuple[Floats, Floats]:
+def _integrals(u: Floats, start_V: float, goal_V: float, supply_V: float, tau_s: float, rise_s: float) -> tuple[Floats, Floats]:
     """Integrals since the supply's beginning (u = 0) of the part's voltage and of the supply's."""
     ramp = np.clip(u, 0.0, rise_s)
     flat = np.maximum(u - rise_s, 0.0)
@@ -191,6 +193,4 @@ def _curve(fit: Fit, rows: _Rows, circuit: Circuit) -> Curve | None:
     u_own = sqrt((farads * fit.u(0)) ** 2 + FIXTURE_U_F**2)
     shared = farads * hypot(circuit.u_gain_v, circuit.u_gain_i)
     estimate = Estimate(farads - circuit.fixture_F, u_own, shared, rows.count)
-    return Curve(
-        estimate, float(fit.parameters[1]), fit.u(1), float(fit.parameters[3]), farads * loop, fit.scatter
-    )
+    return Curve(estimate, float(fit.parameters[1]), fit.u(1), float(fit.parameters[3]), farads * loop, fit.scatter)

@@ -166,14 +166,10 @@ def _robust_line(x: NDArray[np.int64], y: Floats) -> tuple[float, float]:
 def _late(trace: Trace, settled: Settled, middle_s: Floats, until_s: float) -> Bools:
     """Settled rows of the last half of the time at voltage, on the shunt of the end."""
     rows = settled.readings & (middle_s >= _SLOPE_FROM * until_s) & (middle_s <= until_s)
-    return np.asarray(
-        rows & (trace.shunt_ohm == trace.shunt_ohm[rows][-1]) & (trace.range_V == trace.range_V[rows][-1])
-    )
+    return np.asarray(rows & (trace.shunt_ohm == trace.shunt_ohm[rows][-1]) & (trace.range_V == trace.range_V[rows][-1]))
 
 
-def _charging(
-    trace: Trace, settled: Settled, middle_s: Floats, until_s: float, capacitance_F: float
-) -> tuple[float, float]:
+def _charging(trace: Trace, settled: Settled, middle_s: Floats, until_s: float, capacitance_F: float) -> tuple[float, float]:
     """C dV/dt at the end and its doubt: taken off only where the voltage's slope stands out of its noise."""
     rows = _late(trace, settled, middle_s, until_s)
     if int(rows.sum()) < _LEAST_ROWS:
@@ -193,9 +189,7 @@ def _bent(x: Floats, y: Floats, at: float) -> float:
     return float(np.polynomial.polynomial.polyfit(x - at, y, 2)[1])
 
 
-def _absorbed(
-    trace: Trace, settled: Settled, middle_s: Floats, until_s: float, charging_A: float
-) -> tuple[float, float]:
+def _absorbed(trace: Trace, settled: Settled, middle_s: Floats, until_s: float, charging_A: float) -> tuple[float, float]:
     """t |di/dt| at the end, and its standard uncertainty, from a line in 1/t over the last half; 0 if it rises.
 
     Exact for a decay t^-1, and within a tenth for exponents from 0.6 to 1.2.

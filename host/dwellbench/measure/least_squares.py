@@ -39,9 +39,7 @@ class Line:
     def u(self, x: float) -> float:
         """Standard uncertainty of the line at `x` (JCGM 100, H.3.4)."""
         dx = x - self.x0
-        return sqrt(
-            max(self.u_at**2 + (dx * self.u_slope) ** 2 + 2.0 * dx * self.r * self.u_at * self.u_slope, 0.0)
-        )
+        return sqrt(max(self.u_at**2 + (dx * self.u_slope) ** 2 + 2.0 * dx * self.r * self.u_at * self.u_slope, 0.0))
 
 
 def line(x: Floats, y: Floats, x0: float = 0.0) -> Line:
@@ -80,7 +78,9 @@ class Fit:
         return sqrt(max(float(self.covariance[k, k]), 0.0)) * max(self.scatter, 1.0)
 
 
-def least_squares(residuals: Residuals, start: Floats, scale: Floats | None = None) -> Fit | None:
+def least_squares(
+    residuals: Residuals, start: Floats, scale: Floats | None = None, *, still: float = _STILL, most_steps: int = _MOST_STEPS
+) -> Fit | None:
     """Minimise the sum of squares of `residuals(parameters)`, shape (m,), from `start`, shape (n,).
 
     `scale` is the usual size of each parameter, for the differences; where it is left out the start's.
@@ -91,7 +91,7 @@ def least_squares(residuals: Residuals, start: Floats, scale: Floats | None = No
     now = residuals(parameters)
     chi2 = float(now @ now)
     damp = _DAMP_FIRST
-    for steps in range(1, _MOST_STEPS + 1):
+    for steps in range(1, most_steps + 1):
         slopes = _slopes(residuals, parameters, size)
         normal, pull = slopes.T @ slopes, slopes.T @ now
         weight = np.diag(normal).copy()
@@ -107,10 +107,10 @@ def least_squares(residuals: Residuals, start: Floats, scale: Floats | None = No
             damp *= 8.0
         if not moved:
             return _done(residuals, parameters, size, chi2, steps)
-        still = bool(np.all(np.abs(step) <= _STILL * np.maximum(np.abs(parameters), size)))
+        rests = bool(np.all(np.abs(step) <= still * np.maximum(np.abs(parameters), size)))
         parameters, now, chi2 = parameters + step, there, after
         damp = max(damp / 9.0, 1e-15)
-        if still:
+        if rests:
             return _done(residuals, parameters, size, chi2, steps)
     return None
 

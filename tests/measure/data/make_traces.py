@@ -50,15 +50,61 @@ class Case:
 
 
 CASES = [
-    Case("film_47n", 47e-9, 3e10, 632.5, [(0.3, 0.0006), (3.0, 0.0006), (30.0, 0.0006)], ramp_V_per_s=100.0, ramp_shunt_ohm=1e5),
+    Case(
+        "film_47n",
+        47e-9,
+        3e10,
+        632.5,
+        [(0.3, 0.0006), (3.0, 0.0006), (30.0, 0.0006)],
+        ramp_V_per_s=100.0,
+        ramp_shunt_ohm=1e5,
+    ),
     Case("film_1u_step", 1e-6, 2e10, 401.6, [(0.3, 0.0006), (3.0, 0.0006)], charge_s=4.0, recovery_s=5.0),
-    Case("paper_2M", 50e-9, 2e6, 602.4, [(0.3, 0.008), (3.0, 0.008)], ramp_V_per_s=100.0, dwell_shunt_ohm=560.0, dwell_range_V=0.256),
-    Case("electrolytic_forming", 22e-6, 2e9, 451.8, [(1.0, 0.01), (10.0, 0.01)], forming=(4e-4, 3e-5, 60.0), charge_s=53.0, dwell_s=60.0, dwell_shunt_ohm=560.0),
-    Case("electrolytic_sound", 22e-6, 2e9, 451.8, [(1.0, 0.01), (10.0, 0.01)], forming=(2e-5, 5e-6, 20.0), charge_s=53.0, dwell_s=120.0, dwell_shunt_ohm=560.0),
+    Case(
+        "paper_2M",
+        50e-9,
+        2e6,
+        602.4,
+        [(0.3, 0.008), (3.0, 0.008)],
+        ramp_V_per_s=100.0,
+        dwell_shunt_ohm=560.0,
+        dwell_range_V=0.256,
+    ),
+    Case(
+        "electrolytic_forming",
+        22e-6,
+        2e9,
+        451.8,
+        [(1.0, 0.01), (10.0, 0.01)],
+        forming=(4e-4, 3e-5, 60.0),
+        charge_s=53.0,
+        dwell_s=60.0,
+        dwell_shunt_ohm=560.0,
+    ),
+    Case(
+        "electrolytic_sound",
+        22e-6,
+        2e9,
+        451.8,
+        [(1.0, 0.01), (10.0, 0.01)],
+        forming=(2e-5, 5e-6, 20.0),
+        charge_s=53.0,
+        dwell_s=120.0,
+        dwell_shunt_ohm=560.0,
+    ),
     Case("superlinear", 100e-9, 1e10, 602.4, rises=(600.0, 5e7, 5.0), ramp_V_per_s=100.0, dwell_shunt_ohm=560.0),
     Case("open_lead", 1e-12, 1e14, 401.6, connected=False, charge_s=0.7),
     Case("bursts", 100e-9, 2e10, 401.6, [(0.3, 0.0006)], dwell_shunt_ohm=1e5, bursts_s=(4.0, 7.3, 11.0, 15.6)),
-    Case("clipped", 50e-9, 2e6, 602.4, ramp_V_per_s=100.0, ramp_shunt_ohm=1e5, dwell_s=5.0, dwell_shunt_ohm=560.0),
+    Case(
+        "clipped",
+        50e-9,
+        2e6,
+        602.4,
+        ramp_V_per_s=100.0,
+        ramp_shunt_ohm=1e5,
+        dwell_s=5.0,
+        dwell_shunt_ohm=560.0,
+    ),
     Case("mica_100p", 100e-12, 4e11, 502.0, ramp_V_per_s=100.0, ramp_shunt_ohm=1e6),
 ]
 
@@ -92,7 +138,7 @@ class Bench:
         case, dt = self.case, STEP_S
         farads = case.capacitance_F + FIXTURE_F
         to_node = (0.0 if feed_V is None else 1.0 / CHARGE_OHM) + 1.0 / DIVIDER_OHM + (1.0 / BLEED_OHM if bleed else 0.0)
-        push = (0.0 if feed_V is None else feed_V / CHARGE_OHM)
+        push = 0.0 if feed_V is None else feed_V / CHARGE_OHM
         # current into the part as a line in its voltage at the end of the step: node = (push - I) / to_node
         across_S = farads / dt + self.leak_S()
         known = farads / dt * self.part_V - extra_A
@@ -117,7 +163,16 @@ class Writer:
         self.case, self.rows, self.chance = case, [], random.Random(case.seed)
         self.time_s = 0.0
 
-    def stage(self, bench: Bench, name: str, seconds: float, supply, shunt_ohm: float, range_V: float, bleed: bool = False) -> None:
+    def stage(
+        self,
+        bench: Bench,
+        name: str,
+        seconds: float,
+        supply,
+        shunt_ohm: float,
+        range_V: float,
+        bleed: bool = False,
+    ) -> None:
         """Run one stage of whole rows; `supply(t)` gives the feed's volts or None."""
         per_row = 200
         for row in range(round(seconds / (per_row * STEP_S))):
@@ -132,7 +187,15 @@ class Writer:
             self.time_s += per_row * STEP_S
             self.rows.append(self.row(name, shunt_ohm, range_V, volts, amps, feed))
 
-    def row(self, name: str, shunt_ohm: float, range_V: float, volts: list[float], amps: list[float], feed: list[float]) -> str:
+    def row(
+        self,
+        name: str,
+        shunt_ohm: float,
+        range_V: float,
+        volts: list[float],
+        amps: list[float],
+        feed: list[float],
+    ) -> str:
         """One line of the table: twenty conversions in a row, each rounded to a code."""
         unit_V, unit_A = 1.024 / 32768.0 * 1001.0, range_V / 32768.0 / shunt_ohm
         noise = self.chance.gauss
