@@ -4,13 +4,15 @@ import json
 
 from . import VERSION
 from .codes import E_INVALID_PARAMS, E_LID_MUST_BE_OPEN, E_NOT_NOW, E_SETTINGS, FAULT_NONE, FAULTS, REST, STAGES, STATES
+from .compat import const
 from .interlock import HV, LID_OPEN, LID_UNSURE, STOP, UNLOCKED
 from .ratings import check_settings
 from .thermistor import temperature_mc
 from .wire import Refusal
 
 PROTOCOL = [1, 0]
-_PAGE = 240
+_PAGE = const(180)  # letters, each perhaps escaped: with the longest id the answer still fits a line of 512 bytes
+_PAGES = const(64)
 
 
 def hello(box):
@@ -91,6 +93,7 @@ class Pages:
         """Take the controller."""
         self._box = box
         self._of = None
+        self._pages = 0
         self._parts = []
 
     def answer(self, params):
@@ -120,8 +123,9 @@ class Pages:
         pages = params.get("pages", 1)
         if page == 0:
             self._of = of
+            self._pages = pages
             self._parts = []
-        if of != self._of or page != len(self._parts) or page >= pages:
+        if of != self._of or pages != self._pages or page != len(self._parts) or page >= pages:
             raise Refusal(E_SETTINGS, "pages out of order")
         self._parts.append(params["text"])
         if page == pages - 1:
@@ -131,6 +135,10 @@ class Pages:
 
     def _store(self, of, text):
         box = self._box
+        if len(text) > _PAGE * _PAGES:
+            raise Refusal(E_SETTINGS, "too long")
+        if not _plain(text):
+            raise Refusal(E_SETTINGS, "not plain ASCII")
         try:
             value = json.loads(text)
         except ValueError:
@@ -141,6 +149,14 @@ class Pages:
                 raise Refusal(E_SETTINGS, problem)
         box.board.keep(of, text.encode())
         box.settings_changed()
+
+
+def _plain(text):
+    """Say whether every letter is printable ASCII, so that a page of it has a known length on the wire."""
+    for letter in text:
+        if not 32 <= ord(letter) < 127:
+            return False
+    return True
 
 
 def _pairs(of, page, pages, text):
