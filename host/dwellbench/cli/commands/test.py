@@ -60,6 +60,7 @@ def command(ctx: click.Context, **given: Any) -> int:
     """Run the command."""
     options = ready(ctx, given)
     bench.refuse_looks(given["looks"])
+    given["dwell"] = _seconds(given["dwell"])
     part = chosen(Part.parse(given["marking"]), given["section"])
     role = options.places.get(given["role"], given["role"])
     place = Place.parse(role)
@@ -120,7 +121,7 @@ def tell_part(options: Options, part: Part) -> None:
 
 
 def _plan(part: Part, place: Place | None, ratings: Ratings, given: dict[str, Any]) -> Plan:
-    return Plan.make(part, place, ratings, volts=given["volts"], dwell=_seconds(given["dwell"]), grade=given["grade"])
+    return Plan.make(part, place, ratings, volts=given["volts"], dwell=given["dwell"], grade=given["grade"])
 
 
 def _seconds(text: str | None) -> float | None:
