@@ -31,6 +31,7 @@ from .supply import Supply
 from .thermistor import code_at
 from .wire import Wire
 
+_FAREWELL = const(20)  # periods in which the link carries the last answer away: a reset empties its buffers
 _EVENT_ROWS = const(80)  # room in the ring beside two minutes of samples
 _AWAKE = HV | PART_LIVE
 
@@ -46,6 +47,7 @@ class Controller:
         self.build = build
         self.boot = _count_boot(board)
         self.maintenance = False
+        self._leaving = 0  # periods since the answer to it was put
         self.ratings = Ratings(reference, _settings(board))
         self.front = Front(board, self.ratings)
         self.supply = Supply(board, self.ratings)
@@ -140,7 +142,10 @@ class Controller:
 
     def _leave(self):
         """Out into the plain interpreter, once the answer has gone, with every output at rest."""
-        if self.wire.pending():
+        if not self._leaving and self.wire.pending():
+            return
+        self._leaving += 1
+        if self._leaving < _FAREWELL:
             return
         self.board.outputs(0)
         self.board.supply_mv(0)
