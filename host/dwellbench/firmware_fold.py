@@ -41,7 +41,7 @@ def fold(sources: dict[str, str]) -> dict[str, str]:
     modules = {name: _Module(ast.parse(text)) for name, text in sources.items()}
     for name, module in modules.items():
         module.taken = _imports(module.tree, name)
-    while any([_find(module, module.known(modules)) for module in modules.values()]):
+    while any(_find(module, module.known(modules)) for module in modules.values()):
         pass
     return {name: _rewrite(name, module, module.known(modules)) for name, module in modules.items()}
 
@@ -95,19 +95,8 @@ def _inside(node: ast.stmt) -> ast.expr:
     return value
 
 
-_OPERATORS = (
-    ast.Add,
-    ast.Sub,
-    ast.Mult,
-    ast.FloorDiv,
-    ast.Mod,
-    ast.Pow,
-    ast.LShift,
-    ast.RShift,
-    ast.BitOr,
-    ast.BitAnd,
-    ast.BitXor,
-)
+_ARITHMETIC = (ast.Add, ast.Sub, ast.Mult, ast.FloorDiv, ast.Mod, ast.Pow)
+_BITS = (ast.LShift, ast.RShift, ast.BitOr, ast.BitAnd, ast.BitXor)
 
 
 def _value(node: ast.expr, known: _Consts) -> int | None:
@@ -119,7 +108,7 @@ def _value(node: ast.expr, known: _Consts) -> int | None:
     if isinstance(node, ast.UnaryOp) and isinstance(node.op, (ast.USub, ast.Invert)):
         inner = _value(node.operand, known)
         return None if inner is None else -inner if isinstance(node.op, ast.USub) else ~inner
-    if isinstance(node, ast.BinOp) and isinstance(node.op, _OPERATORS):
+    if isinstance(node, ast.BinOp) and isinstance(node.op, (*_ARITHMETIC, *_BITS)):
         left, right = _value(node.left, known), _value(node.right, known)
         if left is None or right is None:
             return None

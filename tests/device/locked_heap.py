@@ -8,6 +8,7 @@ At the end one line a state: its name, how many of its periods were locked, how 
 import json
 
 import micropython
+
 from dwellbox.board_here import make_board
 from dwellbox.codes import DWELL, LOCKOUT, REST, STATES
 from dwellbox.controller import Controller
