@@ -9,6 +9,13 @@ except ImportError:
         return value
 
 
+# The inner loops of the wire: in machine code where the interpreter makes it (the board does), else through its library.
+try:
+    from .native import hex_crc, put_bytes, put_number, put_row
+except (ImportError, SyntaxError, ValueError):  # no MicroPython; no machine code here; compiled for another processor
+    from .plain import hex_crc, put_bytes, put_number, put_row  # noqa: F401
+
+
 # Milliseconds count from 0 to 2**30 - 1 and wrap (12.4 days). The arithmetic below stays inside a 31-bit small integer, so it
 # allocates nothing on the board; the port's own ticks_diff has another period on a desktop build.
 

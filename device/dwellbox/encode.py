@@ -1,178 +1,116 @@
-"""What goes out: one line at a time, written into a buffer made once and sent a few bytes a period.
+"""What goes out: one line at a time, whole in a buffer made once, its checksum last, then sent a few bytes a period.
 
-A line is filled first, a few numbers a period, and then sent a byte at a time while the link has room, its checksum growing with
-it; the checksum's member comes last. A sample line is filled without touching the heap. Other lines are rare and are filled whole.
+Lines of samples, ten a second, are written without touching the heap. The others are rare; their text is made on the heap and
+copied, and nothing of it stays.
 """
 
-from .codes import ENDS, FAULT_NONE, FAULTS, STATES, STAGES
-from .compat import const
-from .crc import Crc
+from .codes import ENDS, FAULT_NONE, FAULTS, STAGES, STATES
+from .compat import const, hex_crc, put_bytes, put_number
 from .ring import DONE, FAULT, LOG, SAMPLE, STATE
 
-LINE = const(512)
-_TAIL = const(19)  # ,"crc":"xxxxxxxx"} and the newline
-_FIELDS = const(18)  # numbers in a row, n included
+LINE = const(512)  # bytes, the newline among them
+TAIL = const(19)  # ,"crc":"xxxxxxxx"} and the newline
+ROWS = const(3)  # of a line: at their longest (107 bytes each) they still fit
 
-_SAMPLES_HEAD = b'{"jsonrpc":"2.0","method":"samples","params":{"n":'
-_BOOT = b',"boot":'
-_ROWS = b',"rows":[['
-_ROWS_END = b"]]}"
+_SAMPLES = b'{"jsonrpc":"2.0","method":"samples","params":{"n":'
+_ROWS_END = b"]}"
 _CRC = b',"crc":"'
-_DIGITS = bytearray(12)
+_END = b'"}\n'
 
 
 class Line:
     """The line on its way out. `busy` until its last byte has been put."""
 
     def __init__(self, boot):
-        """Take the number of this start of the box. `begin_sample` and `send` allocate nothing."""
+        """Take the number of this start of the box."""
         self.busy = False
+        self.next_n = 0  # the event after the last one written
         self._boot = boot
-        self._buffer = bytearray(LINE)
-        self._length = 0
+        self._boot_rows = b',"boot":%d,"rows":[' % boot
+        self._samples = bytearray(LINE)  # keeps its beginning, which is always the same
+        self._other = bytearray(LINE)
+        self._source = self._other
+        self._length = put_bytes(self._samples, 0, _SAMPLES, len(_SAMPLES))
         self._sent = 0
-        self._crc = Crc()
-        self._row = [0] * (_FIELDS - 1)
-        self._field = _FIELDS  # next number of a sample to write; _FIELDS: the line is filled
 
-    # ---- filling
-
-    def begin_sample(self, ring, n):
-        """Begin the line of a sample; `fill` goes on with it."""
-        self._start()
-        ring.row(n, self._row)
-        self._raw(_SAMPLES_HEAD)
-        self._number(n)
-        self._raw(_BOOT)
-        self._number(self._boot)
-        self._raw(_ROWS)
-        self._number(n)
-        self._field = 1
-
-    def fill(self, most):
-        """Write up to `most` further numbers of a sample; say whether the line is filled."""
-        field = self._field
-        if field >= _FIELDS:
-            return True
-        row = self._row
-        stop = field + most
-        while field < _FIELDS and field < stop:
-            self._byte(44)
-            self._number(row[field - 1])
-            field += 1
-        self._field = field
-        if field < _FIELDS:
-            return False
-        self._raw(_ROWS_END)
-        return True
+    def begin_samples(self, ring, n, stop):
+        """Write the line of the sample `n` and of those that follow it, ROWS at most, before `stop`. Allocates nothing."""
+        buffer = self._samples
+        at = put_number(buffer, len(_SAMPLES), n)
+        at = put_bytes(buffer, at, self._boot_rows, len(self._boot_rows))
+        last = n + ROWS
+        if last > stop:
+            last = stop
+        while True:
+            buffer[at] = 91
+            at = put_number(buffer, at + 1, n)
+            at = ring.put_row(n, buffer, at)
+            buffer[at] = 93
+            n += 1
+            if n >= last or ring.kind(n) != SAMPLE:
+                break
+            buffer[at + 1] = 44
+            at += 2
+        self.next_n = n
+        self._begin(buffer, put_bytes(buffer, at + 1, _ROWS_END, 2))
 
     def begin_event(self, ring, n):
-        """Begin the line of any event; a sample's is not filled yet. Allocates, but for samples."""
-        kind = ring.kind(n)
-        if kind == SAMPLE:
-            self.begin_sample(ring, n)
-            return
-        note = ring.note(n)
+        """Write the line of an event that is not a sample. Allocates."""
+        self.next_n = n + 1
+        data = self._event(ring.kind(n), n, ring.note(n))
+        self.begin_data(data, len(data))
+
+    def _event(self, kind, n, note):
+        """Return an event's notification, or a line for people that says why not."""
         if note is None:
-            self.begin_text(self._notification("log", n, 0, [("text", "words no longer kept")]))
-            return
+            return self._notification("log", n, 0, [("text", "words no longer kept")])
         t, words = note
-        method, pairs = _SAY[kind](words)
-        self.begin_text(self._notification(method, n, t, pairs))
+        try:
+            method, pairs = _SAY[kind](words)
+            data = self._notification(method, n, t, pairs)
+        except Exception as error:  # our own defect: a word that is none. The stream goes on
+            return self._notification("log", n, 0, [("text", "event unreadable: " + repr(error)[:60])])
+        if len(data) > LINE - TAIL:
+            return self._notification("log", n, t, [("text", "words too long: " + method)])
+        return data
 
     def _notification(self, method, n, t, pairs):
         params = text([("n", n), ("boot", self._boot), ("t", t)] + pairs)
-        return '{"jsonrpc":"2.0","method":"' + method + '","params":' + params
+        return ('{"jsonrpc":"2.0","method":"' + method + '","params":' + params).encode()
 
-    def begin_text(self, whole):
-        """Begin a line from a text that lacks only its checksum and closing brace; say whether it fits."""
-        data = whole.encode()
-        if len(data) + _TAIL > LINE:
-            return False
-        self._start()
-        self._raw(data)
-        self._field = _FIELDS
-        return True
+    def begin_data(self, data, length):
+        """Copy a line that lacks only its checksum and closing brace; it has at most LINE - TAIL bytes."""
+        self._begin(self._other, put_bytes(self._other, 0, data, length))
 
-    def _start(self):
-        self.busy = True
-        self._length = 0
+    def _begin(self, buffer, length):
+        """Close the line with its checksum."""
+        at = put_bytes(buffer, length, _CRC, 8)
+        hex_crc(buffer, length, buffer, at)
+        self._length = put_bytes(buffer, at + 8, _END, 3)
+        self._source = buffer
         self._sent = 0
-        self._crc.begin()
-
-    def _raw(self, data):
-        buffer = self._buffer
-        length = self._length
-        for byte in data:
-            buffer[length] = byte
-            length += 1
-        self._length = length
-
-    def _byte(self, byte):
-        self._buffer[self._length] = byte
-        self._length += 1
-
-    def _number(self, value):
-        """Write a whole number of at most eleven digits."""
-        if value < 0:
-            self._byte(45)
-            value = -value
-        if value < 10:
-            self._byte(48 + value)
-            return
-        count = 0
-        digits = _DIGITS
-        while value:
-            rest = value // 10
-            digits[count] = 48 + value - rest * 10
-            value = rest
-            count += 1
-        while count:
-            count -= 1
-            self._byte(digits[count])
-
-    # ---- sending
+        self.busy = True
 
     def send(self, board, most):
-        """Put up to `most` bytes while the board has room; return how many. The checksum's member follows by itself."""
-        sent = self._sent
-        length = self._length
-        buffer = self._buffer
-        crc = self._crc
-        count = 0
+        """Put up to `most` bytes while the board has room; return how many. Allocates nothing."""
+        source = self._source
+        start = sent = self._sent
+        stop = sent + most
+        if stop > self._length:
+            stop = self._length
         room = 0
-        while count < most:
-            if sent == length:
-                if self._closing:
-                    break
-                self._close()
-                length = self._length
+        while sent < stop:
             if room <= 0:
                 room = board.room()
                 if room <= 0:
                     break
-            byte = buffer[sent]
-            if not self._closing:
-                crc.add(byte)
-            board.put(byte)
+            board.put(source[sent])
             sent += 1
-            count += 1
             room -= 1
         self._sent = sent
-        if self._closing and sent == self._length:
-            self._closing = False
+        if sent == self._length:
             self.busy = False
-        return count
-
-    _closing = False
-
-    def _close(self):
-        """All members are out: add the checksum's."""
-        self._closing = True
-        self._raw(_CRC)
-        self._crc.hex_into(self._buffer, self._length)
-        self._length += 8
-        self._raw(b'"}\n')
+        return sent - start
 
 
 def text(value):
@@ -188,28 +126,24 @@ def text(value):
     if isinstance(value, str):
         return quoted(value)
     if value and isinstance(value[0], tuple):
-        return "{" + ",".join([quoted(name) + ":" + text(inner) for name, inner in value]) + "}"
+        return "{" + members(value) + "}"
     return "[" + ",".join([text(inner) for inner in value]) + "]"
 
 
+def members(pairs):
+    """Return (name, value) tuples as the members of an object, without its braces. Names are this firmware's own and plain."""
+    return ",".join(['"' + name + '":' + text(value) for name, value in pairs])
+
+
 def quoted(words):
-    """Return a JSON string."""
-    if '"' in words or "\\" in words or not _plain(words):
-        words = "".join([_escaped(letter) for letter in words])
+    """Return a JSON string. What needs escaping is found and replaced by the interpreter's own loops, which cost little."""
+    if "\\" in words:
+        words = words.replace("\\", "\\\\")
+    if '"' in words:
+        words = words.replace('"', '\\"')
+    if words and min(words) < " ":
+        words = "".join([letter if letter >= " " else "\\u%04x" % ord(letter) for letter in words])
     return '"' + words + '"'
-
-
-def _plain(words):
-    for letter in words:
-        if ord(letter) < 32:
-            return False
-    return True
-
-
-def _escaped(letter):
-    if letter == '"' or letter == "\\":
-        return "\\" + letter
-    return "\\u%04x" % ord(letter) if ord(letter) < 32 else letter
 
 
 def _state(words):

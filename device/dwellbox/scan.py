@@ -21,9 +21,15 @@ _NUMBER = const(9)
 _WORD = const(10)
 _END = const(11)
 _BAD = const(12)
+_CONTINUED = const(13)  # within a UTF-8 sequence
+_HALF = const(14)  # after the first half of a surrogate pair
 
 _DEPTH = const(6)
 _DIGITS = const(15)
+_TEXT = const(512)  # longer than a line can be
+
+# Bytes that are themselves in a string, most of what comes: ASCII but for controls, quotation mark and backslash.
+_PLAIN = bytes([32 <= byte < 128 and byte != 34 and byte != 92 for byte in range(256)])
 
 _WORDS = {116: (b"true", True), 102: (b"false", False), 110: (b"null", None)}
 _ESCAPES = {34: 34, 92: 92, 47: 47, 98: 8, 102: 12, 110: 10, 114: 13, 116: 9}
@@ -76,7 +82,7 @@ class Scanner:
 
     def __init__(self):
         """Start with nothing."""
-        self._text = bytearray(512)
+        self._text = bytearray(_TEXT)
         self.begin()
 
     def begin(self):
@@ -108,7 +114,12 @@ class Scanner:
         """Take one byte."""
         state = self._state
         if state == _STRING:
-            self._in_string(byte)
+            length = self._length
+            if _PLAIN[byte] and length < _TEXT:  # nearly always; here rather than in a method, which would cost as much again
+                self._text[length] = byte
+                self._length = length + 1
+            else:
+                self._in_string(byte)
         elif state == _BAD:
             return
         elif state == _NUMBER:
@@ -119,6 +130,10 @@ class Scanner:
             self._in_escape(byte)
         elif state == _HEX:
             self._in_hex(byte)
+        elif state == _CONTINUED:
+            self._in_sequence(byte)
+        elif state == _HALF:
+            self._state = _ESCAPE if byte == 92 else _BAD
         elif byte == 32 or byte == 9 or byte == 13 or byte == 10:
             return
         else:
@@ -135,7 +150,7 @@ class Scanner:
             self._after(byte)
         elif state == _FIRST_ITEM or (state == _FIRST_KEY and byte == 125):
             self._close()
-        elif (state == _KEY or state == _FIRST_KEY) and byte == 34:
+        elif state in (_KEY, _FIRST_KEY) and byte == 34:
             self._begin_string(True)
         else:
             self._state = _BAD
@@ -235,12 +250,12 @@ class Scanner:
 
     def _end_number(self):
         grammar = self._grammar
-        if grammar == _ZERO or grammar == _INT:
+        if grammar in (_ZERO, _INT):
             if self._digits > _DIGITS:
                 self._put(NOT_WHOLE)
             else:
                 self._put(-self._number if self._minus else self._number)
-        elif grammar == _FRACTION or grammar == _POWER:
+        elif grammar in (_FRACTION, _POWER):
             self._put(NOT_WHOLE)
         else:
             self._state = _BAD
@@ -255,24 +270,27 @@ class Scanner:
         self._high = 0
 
     def _in_string(self, byte):
-        if self._more:
-            if not self._low <= byte <= self._most:
-                self._state = _BAD
-                return
-            self._low = 0x80
-            self._most = 0xBF
-            self._more -= 1
-            self._add(byte)
-        elif byte == 34:
+        """A byte that is not itself."""
+        if byte == 34:
             self._end_string()
         elif byte == 92:
             self._state = _ESCAPE
-        elif byte < 32 or self._high:
-            self._state = _BAD  # a control character, or half a surrogate pair left alone
         elif byte < 128:
-            self._add(byte)
+            self._state = _BAD  # a control character, or too long
         else:
             self._lead(byte)
+
+    def _in_sequence(self, byte):
+        """A byte after the first of a UTF-8 sequence."""
+        if not self._low <= byte <= self._most:
+            self._state = _BAD
+            return
+        self._low = 0x80
+        self._most = 0xBF
+        self._more -= 1
+        if not self._more:
+            self._state = _STRING
+        self._add(byte)
 
     def _lead(self, byte):
         """The first byte of a UTF-8 sequence, with the bounds of its second (RFC 3629)."""
@@ -295,6 +313,7 @@ class Scanner:
         else:
             self._state = _BAD
             return
+        self._state = _CONTINUED
         self._add(byte)
 
     def _in_escape(self, byte):
@@ -303,8 +322,8 @@ class Scanner:
             self._unit = 0
             self._left = 4
         elif byte in _ESCAPES and not self._high:
-            self._add(_ESCAPES[byte])
             self._state = _STRING
+            self._add(_ESCAPES[byte])
         else:
             self._state = _BAD
 
@@ -333,6 +352,7 @@ class Scanner:
                 self._state = _BAD
         elif 0xD800 <= unit <= 0xDBFF:
             self._high = unit
+            self._state = _HALF
         elif 0xDC00 <= unit <= 0xDFFF:
             self._state = _BAD
         else:
@@ -343,16 +363,13 @@ class Scanner:
             self._add(byte)
 
     def _add(self, byte):
-        if self._length < len(self._text):
+        if self._length < _TEXT:
             self._text[self._length] = byte
             self._length += 1
         else:
             self._state = _BAD
 
     def _end_string(self):
-        if self._high:
-            self._state = _BAD
-            return
         text = bytes(self._text[: self._length]).decode()
         if self._is_key:
             self._key = text

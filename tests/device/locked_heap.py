@@ -27,7 +27,7 @@ rows = [0] * len(STATES)
 
 def steady(age):
     """Say whether this period must not touch the heap."""
-    if age < SETTLED or board._got or controller.wire._queue or controller.wire._length:
+    if age < SETTLED or board._got or controller.wire._work or controller.wire._length:
         return False
     return course.state == REST or (course.state == DWELL and course.left_ms() > LEFT_MS)
 

@@ -8,9 +8,10 @@ An assertion that fails ends the process with MicroPython's own traceback, which
 import binascii
 import json
 
-from wire_vectors import BAD, CRC, ENCODE, FRACTION, JUDGE, ROWS, SCAN, TWICE
+from wire_vectors import BAD, CRC, ENCODE, FRACTION, JUDGE, NUMBERS, ROWS, SCAN, TWICE
 
-from dwellbox.crc import Crc
+from dwellbox import compat, native
+from dwellbox import plain as library
 from dwellbox.encode import Line, text
 from dwellbox.ring import Ring
 from dwellbox.rpc import judge
@@ -48,16 +49,21 @@ def plain(value):
     return value
 
 
-def check_crc():
-    crc = Crc()
-    for data, expected in CRC:
-        crc.begin()
-        for byte in data:
-            crc.add(byte)
-        out = bytearray(8)
-        crc.hex_into(out, 0)
-        assert out == expected.encode(), (data, out)
-    return len(CRC)
+def check_native():
+    """Machine code here, with words of 64 bits; and the library's way, which an interpreter without machine code takes."""
+    assert compat.hex_crc is native.hex_crc, "this interpreter makes machine code, so it must be what the wire uses"
+    for made in (native, library):
+        for data, expected in CRC:
+            out = bytearray(10)
+            made.hex_crc(data + b"more", len(data), out, 1)
+            assert out == b"\0" + expected.encode() + b"\0", (data, out)
+            assert made.put_bytes(out, 2, data, 3 if len(data) > 3 else len(data)) == 2 + min(3, len(data))
+            assert out[2 : 2 + min(3, len(data))] == data[:3], out
+        for value in NUMBERS:
+            out = bytearray(16)
+            end = made.put_number(out, 2, value)
+            assert out[:end] == b"\0\0" + str(value).encode() and not any(out[end:]), (value, out)
+    return len(CRC) + len(NUMBERS)
 
 
 def check_scan():
@@ -94,12 +100,11 @@ def check_rows():
         for room in (64, 1, 5):
             ring = Ring(64)
             ring.sample(*row)
-            line.begin_sample(ring, 0)
+            line.begin_samples(ring, 0, 1)
             sink = Sink(room)
             while line.busy:
                 sink.next_period()
-                if line.fill(6):
-                    line.send(sink, 32)
+                line.send(sink, 32)
             body = bytes(sink.data)[:-19]
             assert bytes(sink.data)[-19:] == b',"crc":"%08x"}\n' % binascii.crc32(body), sink.data
             assert json.loads(body + b"}")["params"] == {"n": 0, "boot": 7, "rows": [[0] + list(row)]}, sink.data  # noqa: RUF005 - no stars in displays here
@@ -129,7 +134,7 @@ def check_refusal():
 
 
 for name, check in (
-    ("crc", check_crc),
+    ("native", check_native),
     ("scan", check_scan),
     ("encode", check_encode),
     ("rows", check_rows),

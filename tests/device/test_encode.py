@@ -12,7 +12,8 @@ from hypothesis import strategies as st
 from wire_vectors import ENCODE, ROWS
 
 from dwellbox.codes import DWELL, END_SHORT, FAULT_LID_OPEN, FAULT_NONE, ST_DWELL
-from dwellbox.encode import LINE, Line, text
+from dwellbox.encode import LINE, TAIL, Line, text
+from dwellbox.encode import ROWS as ROWS_A_LINE
 from dwellbox.ring import Ring
 
 
@@ -38,15 +39,14 @@ class Sink:
         self.data.append(byte)
 
 
-def sent(line: Line, rooms: list[int], most: int = 32, numbers: int = 6) -> bytes:
-    """Fill and send a line as the wire does; every period is bounded."""
+def sent(line: Line, rooms: list[int], most: int = 32) -> bytes:
+    """Send a line as the wire does; every period is bounded."""
     sink = Sink(rooms)
     while line.busy:
         sink.next_period()
         before = len(sink.data)
-        if line.fill(numbers):
-            count = line.send(sink, most)
-            assert count == len(sink.data) - before <= most
+        count = line.send(sink, most)
+        assert count == len(sink.data) - before <= most
         assert sink.period < 2000
     return bytes(sink.data)
 
@@ -71,7 +71,10 @@ def test_text(value: Any, expected: str) -> None:
 _plain = st.none() | st.booleans() | st.integers() | st.text(st.characters(exclude_categories=["Cs"]), max_size=20)
 
 
-@given(st.lists(st.tuples(st.text(st.characters(exclude_categories=["Cs"]), max_size=5), _plain), min_size=1, max_size=6))
+_name = st.text("abcxyz_0", min_size=1, max_size=5)  # names are the firmware's own
+
+
+@given(st.lists(st.tuples(_name, _plain), min_size=1, max_size=6))
 def test_text_reads_back(pairs: list[tuple[str, Any]]) -> None:
     assert json.loads(text(pairs), object_pairs_hook=list) == pairs
 
@@ -82,7 +85,7 @@ def test_sample_line(row: tuple[int, ...], rooms: list[int]) -> None:
     ring = Ring(64)
     ring.sample(*row)
     line = Line(7)
-    line.begin_sample(ring, 0)
+    line.begin_samples(ring, 0, 1)
     message = checked(sent(line, rooms))
     assert message == {
         "jsonrpc": "2.0",
@@ -93,26 +96,50 @@ def test_sample_line(row: tuple[int, ...], rooms: list[int]) -> None:
     assert not line.busy
 
 
-@pytest.mark.parametrize("numbers", [1, 6, 17, 100])
-def test_a_sample_may_be_filled_in_any_number_of_pieces(numbers: int) -> None:
+@pytest.mark.parametrize(("count", "stop", "lengths"), [(2, 2, [2]), (3, 3, [3]), (7, 7, [3, 3, 1]), (7, 2, [2])])
+def test_rows_that_follow_each_other_share_a_line(count: int, stop: int, lengths: list[int]) -> None:
     ring = Ring(64)
-    ring.sample(*ROWS[2])
+    for k in range(count):
+        ring.sample(k, *ROWS[1][1:])
     line = Line(7)
-    line.begin_sample(ring, 0)
-    assert checked(sent(line, [64], numbers=numbers))["params"]["rows"] == [[0, *ROWS[2]]]
+    n = 0
+    for length in lengths:
+        line.begin_samples(ring, n, stop)
+        params = checked(sent(line, [64]))["params"]
+        assert params["n"] == n
+        assert params["rows"] == [[m, m, *ROWS[1][1:]] for m in range(n, n + length)]
+        n += length
+        assert line.next_n == n
 
 
-def test_the_longest_sample_line_fits() -> None:
-    """Every number of a row at its longest, `n` at 30 bits, a seven-digit boot."""
+def test_rows_share_a_line_only_up_to_another_event() -> None:
     ring = Ring(64)
-    ring.n = ring.first = 2**30 - 1
+    ring.sample(*ROWS[0])
+    ring.log(0, "between")
+    ring.sample(*ROWS[1])
+    line = Line(7)
+    line.begin_samples(ring, 0, 3)
+    assert checked(sent(line, [64]))["params"]["rows"] == [[0, *ROWS[0]]]
+    line.begin_event(ring, line.next_n)
+    assert checked(sent(line, [64]))["params"]["text"] == "between"
+    assert line.next_n == 2
+
+
+def test_the_longest_rows_fit() -> None:
+    """Every number of a row at its longest, `n` at 30 bits, a seven-digit boot; as many rows as a line takes."""
+    ring = Ring(64)
+    first = 2**30 - 1 - ROWS_A_LINE
+    ring.n = ring.first = first
     longest = (2**30 - 1, 11, 2, 1, 31, -1015808, -32768, -32768, 31, -1015808, -32768, -32768, 31, -32768, -32768, 15, 1)
-    ring.sample(*longest)
+    for _ in range(ROWS_A_LINE):
+        ring.sample(*longest)
     line = Line(9999999)
-    line.begin_sample(ring, 2**30 - 1)
+    line.begin_samples(ring, first, first + 1)
     data = sent(line, [64])
-    assert checked(data)["params"]["rows"] == [[2**30 - 1, *longest]]
-    assert len(data) <= 240, "a sample line stays short: ten a second on the slowest link"
+    assert checked(data)["params"]["rows"] == [[first, *longest]]
+    assert len(data) <= 220, "a sample line stays short: ten a second on the slowest link"
+    line.begin_samples(ring, first, ring.n)
+    assert checked(sent(line, [64]))["params"]["rows"] == [[first + k, *longest] for k in range(ROWS_A_LINE)]
 
 
 EVENTS = (
@@ -143,12 +170,30 @@ def test_event_line(method: str, put: Any, params: dict[str, Any]) -> None:
     assert list(message["params"])[:3] == ["n", "boot", "t"]
 
 
-def test_a_text_that_does_not_fit_is_refused_and_the_line_stays_free() -> None:
+def test_words_that_are_gone_are_told_as_gone() -> None:
+    ring = Ring(512)
+    for _ in range(200):
+        ring.log(0, "a")
     line = Line(1)
-    room = LINE - 19 - len('{"result":""')
-    assert not line.begin_text('{"result":"' + "x" * (room + 1) + '"')
-    assert not line.busy
-    assert line.begin_text('{"result":"' + "x" * room + '"')
+    line.begin_event(ring, 3)
+    params = checked(sent(line, [64]))["params"]
+    assert (params["n"], params["text"]) == (3, "words no longer kept")
+
+
+@pytest.mark.parametrize("letter", ["x", '"', "\x01", "\u20ac"])
+def test_a_line_for_people_is_cut_or_replaced_never_too_long(letter: str) -> None:
+    ring = Ring(64)
+    ring.log(0, letter * 1000)
+    line = Line(1)
+    line.begin_event(ring, 0)
+    said = checked(sent(line, [64]))["params"]["text"]
+    assert said in (letter * 120, "words too long: log")
+
+
+def test_the_longest_line_is_sent_whole() -> None:
+    line = Line(1)
+    data = b'{"result":"' + b"x" * (LINE - TAIL - 12) + b'"'
+    line.begin_data(data, len(data))
     assert len(sent(line, [64])) == LINE
 
 
@@ -157,12 +202,5 @@ def test_one_line_serves_after_another() -> None:
     line = Line(1)
     for row in ROWS * 2:
         ring.sample(*row)
-        line.begin_sample(ring, ring.n - 1)
+        line.begin_samples(ring, ring.n - 1, ring.n)
         assert checked(sent(line, [5]))["params"]["rows"] == [[ring.n - 1, *row]]
-
-
-@given(st.integers(-(2**34), 2**34))
-def test_numbers(value: int) -> None:
-    line = Line(1)
-    line._number(value)
-    assert line._buffer[: line._length] == str(value).encode()

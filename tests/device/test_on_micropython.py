@@ -3,13 +3,13 @@
 from __future__ import annotations
 
 from micropython_process import run_script
-from wire_vectors import CRC, ENCODE, JUDGE, ROWS, SCAN, TWICE
+from wire_vectors import CRC, ENCODE, JUDGE, NUMBERS, ROWS, SCAN, TWICE
 
 
 def test_vectors() -> None:
     said = dict(line.split() for line in run_script("on_micropython.py", "-X", "heapsize=512K").splitlines())
     counts = {
-        "crc": len(CRC),
+        "native": len(CRC) + len(NUMBERS),
         "scan": len(SCAN) + len(TWICE),
         "encode": len(ENCODE),
         "rows": len(ROWS),

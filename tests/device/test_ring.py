@@ -21,9 +21,9 @@ _rows = st.tuples(
 
 
 def read(ring: Ring, n: int) -> tuple[int, ...]:
-    into = [0] * 17
-    ring.row(n, into)
-    return tuple(into)
+    buffer = bytearray(200)
+    end = ring.put_row(n, buffer, 7)
+    return tuple(int(number) for number in buffer[8:end].split(b","))
 
 
 @pytest.mark.parametrize("row", ROWS)

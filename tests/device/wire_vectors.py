@@ -118,6 +118,9 @@ SCAN = (
 # texts in which a member stands twice: JSON all the same, and told
 TWICE = (b'{"a":1,"a":2}', b'[{"b":{"c":1,"c":1}}]', b'{"a":1,"\\u0061":2}')
 
+# Whole numbers of up to 30 bits
+NUMBERS = (0, 1, 9, 10, 99, 100, 101, 999999, 1000000, 1073741823, -1, -9, -10, -32768, -8355840, -1073741824)
+
 # (value, its text); a list of pairs is an object in that order
 ENCODE = (
     (None, "null"),
