@@ -3,8 +3,8 @@ a model.
 
 C = (charge through the shunt - what leaked meanwhile) / (change of the voltage across the part), over the
 longest stretch of charging read without a break on one shunt. Means of windows are compared with means of
-windows: the charge that had flowed by the middle of a window is S + i dt/2 - (di/dt) dt^2/12, S being the sum
-before it, so no voltage has to be guessed at the edge of a window.
+windows: the charge that had flowed by the middle of a window is the sum before it and a share of its own, which
+follows from how fast the current falls there (`_middle`); no voltage has to be guessed at the edge of a window.
 
 How much leaks while the voltage rises is known least: a leak may rise faster than the voltage, a forming
 electrolytic leaks most at the end of its charging, and what is absorbed looks like leakage. So the sum may be
@@ -31,6 +31,7 @@ _LEAST_ROWS = 3
 _STEADY_ROWS = 5
 _EARLIEST_ROW = 5
 _TREND_U = 3.0  # doubts that two sums must differ by before the difference is followed
+_STEEPEST = 5.0  # decay of the current from one row to the next, natural logarithm
 _BEGINS = 5  # rows at which a sum may begin: the first holds the step, unless it came before
 _LEAK_U = 0.003  # what a leak that is read twice alike may still have been in between
 _LOW_V = (15.0, 55.0)
@@ -127,9 +128,9 @@ class _Balance:
         self.t = trace.t_s[rows] - 0.5 * self.dt
         self.amps = trace.i_shunt_A[rows]
         self.volts = trace.across_V[rows]
-        self.charge = _running(self.amps, self.dt, self.t)
+        middle_C, self.edge_C = _middle(self.amps, self.dt)
+        self.charge = np.cumsum(self.amps * self.dt) - self.amps * self.dt + middle_C
         self.area = _running(self.volts, self.dt, self.t)
-        self.edge_C = _edges(self.amps, self.dt)
         self.u_offset_A = float(trace.u_offset_A[rows].max())
         self.code_A = float(trace.range_V[stretch.first] / 32768.0 / trace.shunt_ohm[stretch.first])
         self.full = min(max(self._reaches(_IN) + 1, 2), len(self.t) - 1)
@@ -211,15 +212,27 @@ def _running(values: Floats, dt: Floats, t: Floats) -> Floats:
     return np.asarray(before + values * dt / 2.0 - _slope(values, t) * dt**2 / 12.0)
 
 
-def _edges(amps: Floats, dt: Floats) -> Floats:
-    """How far off the charge by the middle of each row may be, coulombs: what bends within the row. A row
-    before any current is sure; the first and the last, whose neighbour is not known, are as doubtful as they
-    differ from the next.
+def _middle(amps: Floats, dt: Floats) -> tuple[Floats, Floats]:
+    """Charge by the middle of each row beyond that before it, and how far off it may be, coulombs.
+
+    On a current that falls as e^-at the mean over a row of its own charge is i dt (1 / (1 - e^-a) - 1 / a), a counted in
+    rows: half of it on a straight stretch. The decay is read from the rows on either side; how far these two differ is the
+    doubt. A row before any current is sure; the first of a stretch may hold the step itself, anywhere in it.
     """
-    steps = np.diff(amps)
-    bend = np.abs(np.diff(steps)) / 24.0
-    ends = np.abs(steps[[0, -1]]) / 8.0
-    return np.asarray(np.minimum(np.concatenate((ends[:1], bend, ends[1:])), np.abs(amps) / 2.0) * dt)
+    size = np.maximum(np.abs(amps), 1e-30)
+    decay = np.clip(-np.diff(np.log(size)), -_STEEPEST, _STEEPEST)
+    decay[amps[1:] * amps[:-1] <= 0.0] = 0.0
+    left, right = np.concatenate((decay[:1], decay)), np.concatenate((decay, decay[-1:]))
+    both = np.where(left * right > 0.0, 0.5 * (left + right), 0.0)
+    doubt = np.minimum(np.abs(_share(left) - _share(right)) / 2.0, 0.5)
+    doubt[0] = 0.25
+    return np.asarray(_share(both) * amps * dt), np.asarray(doubt * np.abs(amps) * dt)
+
+
+def _share(decay: Floats) -> Floats:
+    """1 / (1 - e^-a) - 1 / a, a half at a = 0."""
+    a = np.where(np.abs(decay) < 1e-4, 1e-4, decay)
+    return np.asarray(1.0 / -np.expm1(-a) - 1.0 / a)
 
 
 def _slope(values: Floats, t: Floats) -> Floats:

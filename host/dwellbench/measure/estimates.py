@@ -45,7 +45,7 @@ ABSORBED_SHARE = {
 _ABSORBED_UNKNOWN = 0.005
 _LOOK_U = 0.05  # the box reckons its look with nominal scales, in whole numbers
 CLASS_II = ("ceramic_2", "ceramic")
-_ABSORBED_DECADES = 1.5
+_ABSORBED_DECADES = 2.0
 
 
 @dataclass(frozen=True)
@@ -147,7 +147,7 @@ def estimate(trace: Trace, expect_F: float | None = None, dielectric: str | None
     leaks = _leaks(leak, low)
     balance = charge_balance(trace, circuit, stretch, leaks)
     curve = fit_curve(trace, circuit, stretch, balance.value if balance else None)
-    combined, apart = combine(balance, curve, _APART + _absorbed(dielectric))
+    combined, apart = combine(balance, curve, _APART + 2.0 * _absorbed(dielectric))
     if dielectric in CLASS_II:
         combined = _at_low_volts(trace, circuit, stretch, leaks) or combined
     end_s = _dwell_s(trace)

@@ -16,15 +16,17 @@ from math import hypot, sqrt
 import numpy as np
 from numpy.typing import NDArray
 
-from dwellbench.measure.least_squares import Line, line
+from dwellbench.measure.least_squares import line
 from dwellbench.measure.settled import Settled
 from dwellbench.measure.trace import Bools, Circuit, Floats, Trace
 
 LEAST_EXPONENT = 0.6
 _ABSORPTION_U = 0.5
 _LEAST_ROWS = 5
-_SHARE = 0.1  # of the time at voltage: the last tenth is read
-_WINDOW_S = (1.0, 10.0)
+_SHARE = 0.15  # of the time at voltage, its end, is averaged
+_WINDOW_S = (3.0, 15.0)
+_SHAPE_U = 0.3  # of what a row is brought along the decay: the shape is not quite 1/t
+_BEAT_ROWS = 5.0  # rows that do not scatter independently: ripple beats with the sampling over about this many
 _SLOPE_FROM = 0.5  # the slope is taken over the last half of the dwell
 _DRIFT_V_PER_S = 1e-4  # of the warm supply: what C dV/dt may hide below the voltage's own noise
 _LOUD = 6.0  # deviations of a row from its neighbours' median above which it is a burst, not noise
@@ -95,7 +97,7 @@ def read_leakage(
     if begin_s is None:
         return None
     until_s = float(trace.t_s[settled.dwell][-1]) - begin_s if at_s is None else at_s
-    window_s = min(max(_SHARE * until_s, _WINDOW_S[0]), _WINDOW_S[1])
+    window_s = min(max(_SHARE * until_s, min(_WINDOW_S[0], _SLOPE_FROM * until_s)), _WINDOW_S[1])
     since_s = trace.t_s - begin_s
     rows = settled.readings & (since_s > until_s - window_s - 1e-9) & (since_s <= until_s + 1e-6)
     rows &= trace.shunt_ohm == (trace.shunt_ohm[rows][-1] if rows.any() else 0.0)
@@ -115,28 +117,60 @@ def _read(
 ) -> Leakage:
     middle_s = since_s - 0.5 * trace.interval_s
     quiet = rows & ~bursts(trace.i_shunt_A, rows)
-    current = line(middle_s[quiet], trace.i_shunt_A[quiet], until_s)
-    across = line(middle_s[quiet], trace.across_V[quiet], until_s)
-    volts_V = across.at
+    decay = _Decay(trace, settled, middle_s, until_s)
+    current, u_current = decay.at_end(trace.i_shunt_A, quiet)
+    volts_V = line(middle_s[quiet], trace.across_V[quiet], until_s).at
     charging_A, u_charging_A = _charging(trace, settled, middle_s, until_s, capacitance_F or 0.0)
     fixture_A = volts_V / circuit.fixture_ohm
-    absorbed_A, u_absorbed_A = _absorbed(trace, settled, middle_s, until_s, charging_A)
-    offset_A = float(trace.u_offset_A[quiet].max())
     return Leakage(
         time_s=until_s,
         volts_V=volts_V,
-        total_A=current.at,
-        u_read_A=hypot(max(current.u_at, current.s / sqrt(float(quiet.sum()))), offset_A),
+        total_A=current,
+        u_read_A=hypot(u_current, float(trace.u_offset_A[quiet].max())),
         charging_A=charging_A,
         u_charging_A=u_charging_A,
         fixture_A=fixture_A,
         u_fixture_A=fixture_A * circuit.u_fixture_rel,
-        absorbed_A=absorbed_A,
-        u_absorbed_A=u_absorbed_A,
-        slope_per_s=current.slope / current.at if current.at else 0.0,
+        absorbed_A=max(decay.part_A, 0.0),
+        u_absorbed_A=decay.u_part_A,
+        slope_per_s=-decay.part_A / decay.since_s / current if current else 0.0,
         shunt_ohm=float(trace.shunt_ohm[quiet][-1]),
         rows=int(quiet.sum()),
     )
+
+
+class _Decay:
+    """The fall of the current over the last half of its time, as a line in 1/t: t |di/dt| at the end is its slope.
+
+    Exact for a decay t^-1, and within a tenth for exponents from 0.6 to 1.2. The time counts from when half the voltage was
+    on the part, for the part absorbs while it is charged: `since_s` is that time at the end.
+    """
+
+    def __init__(self, trace: Trace, settled: Settled, middle_s: Floats, until_s: float) -> None:
+        origin_s = _applied_s(trace, middle_s)
+        self.since_s = until_s - origin_s
+        self.shape = self.since_s / np.maximum(middle_s - origin_s, 0.1) - 1.0
+        rows = _late(trace, settled, middle_s, until_s)
+        rows &= ~bursts(trace.i_shunt_A, rows)
+        fit = line(self.shape[rows], trace.i_shunt_A[rows])
+        self.part_A, self.u_part_A = fit.slope, fit.u_slope * sqrt(_BEAT_ROWS)
+
+    def at_end(self, amps: Floats, rows: Bools) -> tuple[float, float]:
+        """The current at the end: the mean of `rows`, each brought there along the decay; and its uncertainty."""
+        brought = amps[rows] - self.part_A * self.shape[rows]
+        u_mean = float(np.std(brought)) * sqrt(_BEAT_ROWS / brought.size)
+        way = abs(float(np.mean(self.shape[rows])))
+        return float(np.mean(brought)), hypot(u_mean, way * hypot(self.u_part_A, _SHAPE_U * self.part_A))
+
+
+def _applied_s(trace: Trace, middle_s: Floats) -> float:
+    """When half of the dwell's voltage was on the part, on the clock of `middle_s`; 0 where the charge was not recorded."""
+    charge = np.flatnonzero(trace.rows("charge"))
+    if not charge.size:
+        return 0.0
+    half_V = 0.5 * float(np.median(trace.across_V[trace.rows("dwell")]))
+    there = charge[trace.across_V[charge] >= half_V]
+    return min(float(middle_s[there[0]]), 0.0) if there.size else 0.0
 
 
 def bursts(amps: Floats, rows: Bools) -> Bools:
@@ -187,16 +221,3 @@ def _bent(x: Floats, y: Floats, at: float) -> float:
     if x.size < 2 * _LEAST_ROWS:
         return line(x, y, at).slope
     return float(np.polynomial.polynomial.polyfit(x - at, y, 2)[1])
-
-
-def _absorbed(trace: Trace, settled: Settled, middle_s: Floats, until_s: float, charging_A: float) -> tuple[float, float]:
-    """t |di/dt| at the end, and its standard uncertainty, from a line in 1/t over the last half; 0 if it rises.
-
-    Exact for a decay t^-1, and within a tenth for exponents from 0.6 to 1.2.
-    """
-    rows = _late(trace, settled, middle_s, until_s)
-    if int(rows.sum()) < _LEAST_ROWS:
-        return 0.0, abs(float(trace.i_shunt_A[settled.readings][-1]))
-    rows &= ~bursts(trace.i_shunt_A, rows)
-    decay: Line = line(until_s / middle_s[rows], trace.i_shunt_A[rows])
-    return max(decay.slope, 0.0), decay.u_slope
