@@ -83,7 +83,9 @@ def ids(outcome: Outcome) -> set[str]:
         ("mica_100p", MICA, None, "fit", "use", set()),
     ],
 )
-def test_verdicts(name: str, what: Part, role: str | None, verdict: str, following: str | None, seen: set[str]) -> None:
+def test_verdicts(
+    name: str, what: Part, role: str | None, verdict: str, following: str | None, seen: set[str]
+) -> None:
     outcome = analyse(trace(name), what, role)
     assert outcome.verdict == verdict, outcome.reason
     assert seen <= ids(outcome)
@@ -134,13 +136,17 @@ def ended(tmp_path: Path, end: str, **header: object) -> Trace:
         ("something_new", {}, "undecided", None, "interrupted"),
     ],
 )
-def test_early_ends(tmp_path: Path, end: str, header: dict[str, object], verdict: str, following: str | None, seen: str) -> None:
+def test_early_ends(
+    tmp_path: Path, end: str, header: dict[str, object], verdict: str, following: str | None, seen: str
+) -> None:
     outcome = judge(ended(tmp_path, end, **header), FILM)
     assert (outcome.verdict, outcome.next) == (verdict, following)
     assert ids(outcome) == {seen}
     assert outcome.end == end
     assert not outcome.dwell_complete
-    assert all(getattr(outcome, name) is None for name in QUANTITIES), "nothing is claimed that was not measured"
+    assert all(getattr(outcome, name) is None for name in QUANTITIES), (
+        "nothing is claimed that was not measured"
+    )
     assert outcome.limits == ()
     assert outcome.suits == ()
     if verdict == "undecided":
@@ -156,7 +162,9 @@ def test_an_interrupted_dwell_is_no_result(end: str) -> None:
 
 def test_a_dead_short_seen_in_the_trace_itself() -> None:
     shorted = trace("film_47n")
-    flat = replace(shorted, v_part_V=np.full(len(shorted), 1.0), i_shunt_A=np.full(len(shorted), 632.5 / 400e3))
+    flat = replace(
+        shorted, v_part_V=np.full(len(shorted), 1.0), i_shunt_A=np.full(len(shorted), 632.5 / 400e3)
+    )
     low = replace(flat, shunt_ohm=np.full(len(shorted), 560.0), range_V=np.full(len(shorted), 1.024))
     outcome = judge(low, FILM)
     assert outcome.verdict == "unfit"
@@ -279,7 +287,9 @@ def test_thresholds_decide() -> None:
 def test_an_unsure_limit_blesses_but_does_not_condemn() -> None:
     """Paper of 100 Mohm misses the remembered minima; only what an ohmmeter shows condemns."""
     dwell = trace("film_47n")
-    leaky = replace(dwell, i_shunt_A=np.where(dwell.stage == "dwell", dwell.v_part_V / 100e6, dwell.i_shunt_A))
+    leaky = replace(
+        dwell, i_shunt_A=np.where(dwell.stage == "dwell", dwell.v_part_V / 100e6, dwell.i_shunt_A)
+    )
     shown = replace(leaky, shunt_ohm=np.where(dwell.stage == "dwell", 560.0, dwell.shunt_ohm))
     outcome = judge(shown, part("paper", 47e-9, 600.0))
     assert outcome.verdict == "undecided"

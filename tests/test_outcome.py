@@ -15,7 +15,9 @@ from dwellbench.judge import analyse
 from dwellbench.outcome import EXIT_STATUS, NEXTS, QUANTITIES, VERDICTS, Finding, Outcome
 from dwellbench.part import Part
 
-SCHEMA: dict[str, Any] = json.loads((Path(dwellbench.outcome.__file__).parent / "outcome.schema.json").read_text("utf-8"))
+SCHEMA: dict[str, Any] = json.loads(
+    (Path(dwellbench.outcome.__file__).parent / "outcome.schema.json").read_text("utf-8")
+)
 DATA = Path(__file__).parent / "measure" / "data"
 FILM = Part("47n 630V film", capacitance_F=47e-9, rated_V=630.0, rated_kind="dc", dielectric="film")
 PAPER = Part("50n 600V paper", capacitance_F=50e-9, rated_V=600.0, rated_kind="dc", dielectric="paper")
@@ -25,7 +27,14 @@ MEMBERS = (
     *("schema", "record", "run", "time_utc", "box", "firmware", "calibration", "simulated"),
     *("part", "role", "grade", "verdict", "reason", "next", "findings"),
     *("test_V", "dwell_s", "dwell_complete", "temperature_C", "humidity_percent"),
-    *("capacitance_F", "total_current_A", "leakage_A", "insulation_ohm", "time_constant_s", "absorption_ratio"),
+    *(
+        "capacitance_F",
+        "total_current_A",
+        "leakage_A",
+        "insulation_ohm",
+        "time_constant_s",
+        "absorption_ratio",
+    ),
     *("polarisation_index", "recovery_percent", "grid_shift_V"),
     *("limits", "suits", "not_for", "valid_to_V", "not_tested"),
 )
@@ -67,7 +76,9 @@ def outcomes() -> dict[str, Outcome]:
         "unfit": analyse(DATA / "paper_2M.csv", PAPER, "coupling"),
         "open": analyse(DATA / "open_lead.csv", FILM),
         "bare": analyse(DATA / "film_1u_step.csv", Part("?")),
-        "least": Outcome(part=Part("?"), role=None, grade="new", verdict="undecided", reason="Nothing was measured."),
+        "least": Outcome(
+            part=Part("?"), role=None, grade="new", verdict="undecided", reason="Nothing was measured."
+        ),
     }
 
 

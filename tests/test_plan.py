@@ -13,7 +13,9 @@ BOX = Ratings()
 FILM = Part("47n 630V film", capacitance_F=47e-9, rated_V=630.0, rated_kind="dc", dielectric="film")
 HIGH = Part("10n 1600V film", capacitance_F=10e-9, rated_V=1600.0, rated_kind="dc", dielectric="film")
 MAINS = Part("100n 275VAC film", capacitance_F=100e-9, rated_V=275.0, rated_kind="ac", dielectric="film")
-CAN = Part("22uF 450V", capacitance_F=22e-6, rated_V=450.0, rated_kind="dc", dielectric="electrolytic", polar=True)
+CAN = Part(
+    "22uF 450V", capacitance_F=22e-6, rated_V=450.0, rated_kind="dc", dielectric="electrolytic", polar=True
+)
 BARE = Part("47n", capacitance_F=47e-9)
 COUPLING = Place.parse("coupling@310V/470k")
 
@@ -62,7 +64,9 @@ def test_what_is_refused(part: Part, place: Place | None, volts: float | None, w
     assert caught.value.remedy
 
 
-@pytest.mark.parametrize(("dwell", "grade"), [(0.1, "new"), (3601.0, "new"), (60.0, "ancient"), (float("nan"), "new")])
+@pytest.mark.parametrize(
+    ("dwell", "grade"), [(0.1, "new"), (3601.0, "new"), (60.0, "ancient"), (float("nan"), "new")]
+)
 def test_times_and_grades_that_are_none(dwell: float, grade: str) -> None:
     with pytest.raises(UsageError):
         Plan.make(FILM, None, BOX, dwell=dwell, grade=grade)
@@ -83,7 +87,9 @@ def test_usual_times(part: Part, grade: str, dwell: float, bleed: float) -> None
 
 
 def test_a_stricter_box_gets_a_lower_voltage() -> None:
-    strict = Ratings.from_hello({"volts_mv": 300000, "energy_mj": 10000, "capacitance_nf": 100000, "dwell_ms": 30000})
+    strict = Ratings.from_hello(
+        {"volts_mv": 300000, "energy_mj": 10000, "capacitance_nf": 100000, "dwell_ms": 30000}
+    )
     assert strict == Ratings(300.0, 10.0, 100e-6, 30.0)
     plan = Plan.make(FILM, None, strict)
     assert plan.volts_V == 300.0

@@ -150,7 +150,9 @@ class Outcome:
         """The document as JSON values, members in the interface's order."""
         document: dict[str, Any] = {name: getattr(self, name) for name in _HEAD}
         document["part"] = self.part.as_json()
-        document.update((name, getattr(self, name)) for name in ("role", "grade", "verdict", "reason", "next"))
+        document.update(
+            (name, getattr(self, name)) for name in ("role", "grade", "verdict", "reason", "next")
+        )
         document["findings"] = [finding.as_json() for finding in self.findings]
         document.update((name, getattr(self, name)) for name in _CONDITIONS)
         for name in QUANTITIES:
@@ -159,7 +161,9 @@ class Outcome:
         document["limits"] = [limit.as_json() for limit in self.limits]
         document["suits"] = [suit.as_json() for suit in self.suits]
         document["not_for"] = [suit.as_json() for suit in self.not_for]
-        document.update(valid_to_V=self.valid_to_V, not_tested=list(self.not_tested), to_decide=self.to_decide)
+        document.update(
+            valid_to_V=self.valid_to_V, not_tested=list(self.not_tested), to_decide=self.to_decide
+        )
         document.update(end=self.end, fault=self.fault, assumed=list(self.assumed), notes=list(self.notes))
         return document
 

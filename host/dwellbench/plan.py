@@ -175,7 +175,9 @@ def target_volts(part: Part, place: Place | None, ratings: Ratings, volts: float
             remedy="Give the DC test voltage with --volts, or the place's with --role PLACE@VOLTS.",
         )
     if part.rated_V > ratings.volts_V:
-        why = f"Tested at {ratings.volts_V:g} V, the most this box gives; the part is rated {part.rated_V:g} V."
+        why = (
+            f"Tested at {ratings.volts_V:g} V, the most this box gives; the part is rated {part.rated_V:g} V."
+        )
         return ratings.volts_V, why
     return part.rated_V, f"Tested at {part.rated_V:g} V, the part's DC rating."
 

@@ -44,7 +44,9 @@ def test_a_resistance_is_read_as_it_is_written(value: float) -> None:
     assert ohms(short_ohms(value)) == pytest.approx(value, rel=1e-9)
 
 
-@pytest.mark.parametrize(("text", "value"), [("310V", 310.0), ("310", 310.0), ("12.5 v", 12.5), ("400VDC", 400.0)])
+@pytest.mark.parametrize(
+    ("text", "value"), [("310V", 310.0), ("310", 310.0), ("12.5 v", 12.5), ("400VDC", 400.0)]
+)
 def test_voltages(text: str, value: float) -> None:
     assert volts(text) == value
 

@@ -37,7 +37,9 @@ def measured(kind: str) -> list[tuple[Recording, Estimates]]:
     least_F, most_F, least_ohm, most_ohm, share, dwell_s = KINDS[kind]
     found = []
     for seed in range(PARTS):
-        ladder = tuple((0.1 * 10.0**k * chance.uniform(0.6, 1.6), share * chance.uniform(0.5, 1.6)) for k in range(5))
+        ladder = tuple(
+            (0.1 * 10.0**k * chance.uniform(0.6, 1.6), share * chance.uniform(0.5, 1.6)) for k in range(5)
+        )
         farads = 10.0 ** chance.uniform(log10(least_F), log10(most_F))
         ohm = 10.0 ** chance.uniform(log10(least_ohm), log10(most_ohm))
         part = PartSpec(capacitance_F=farads, leakage_ohm=ohm, esr_ohm=0.5, absorption=ladder)
@@ -62,7 +64,8 @@ def misses(kind: str, name: str, truth: str) -> int:
 
 @pytest.mark.parametrize("kind", sorted(KINDS))
 @pytest.mark.parametrize(
-    ("name", "truth"), [("capacitance_F", "capacitance_F"), ("total_current_A", "shunt_A"), ("leakage_A", "leakage_A")]
+    ("name", "truth"),
+    [("capacitance_F", "capacitance_F"), ("total_current_A", "shunt_A"), ("leakage_A", "leakage_A")],
 )
 def test_bounds_hold_the_truth(kind: str, name: str, truth: str) -> None:
     """Of 60, three misses are expected; more than eight come by chance once in a hundred times."""

@@ -50,7 +50,9 @@ def row(n: int, t: int, stage: int, **members: int) -> list[int]:
 
 
 def test_every_code_becomes_its_quantity() -> None:
-    raw = RawTrace.from_rows([row(1, 100, DWELL, shunt=1, range=1, vrange=1, sv=18 * 1000, vmin=990, vmax=1010, si=2000, vs=501)])
+    raw = RawTrace.from_rows(
+        [row(1, 100, DWELL, shunt=1, range=1, vrange=1, sv=18 * 1000, vmin=990, vmax=1010, si=2000, vs=501)]
+    )
     trace = calibrate(raw, Calibration.from_json(data()))
     assert trace.v_part_V[0] == pytest.approx((1000 + 4) * 0.0078)
     assert trace.v_min_V[0] == pytest.approx((990 + 4) * 0.0078)
@@ -115,7 +117,9 @@ def test_without_a_calibration_the_worst_tolerances_stand() -> None:
 def test_thermistor(ohm: float, celsius: float) -> None:
     """Table points of a 10 kohm, B 3977 K thermistor, from memory; the beta model is good to half a kelvin there."""
     code = round(1.000 * ohm / (ohm + 10000.0) / 1.024 * 32768)
-    raw = RawTrace.from_rows([row(1, 100, DWELL, temp=0), row(2, 200, DWELL, temp=code), row(3, 300, DWELL, temp=code)])
+    raw = RawTrace.from_rows(
+        [row(1, 100, DWELL, temp=0), row(2, 200, DWELL, temp=code), row(3, 300, DWELL, temp=code)]
+    )
     assert part_temperature_C(raw) == pytest.approx(celsius, abs=0.5)
 
 

@@ -30,7 +30,9 @@ def text(*rows: str, head: str = HEAD, before: str = "") -> str:
 def same(one: Trace, other: Trace) -> None:
     for field in fields(Trace):
         if field.name != "header":
-            np.testing.assert_array_equal(getattr(one, field.name), getattr(other, field.name), err_msg=field.name)
+            np.testing.assert_array_equal(
+                getattr(one, field.name), getattr(other, field.name), err_msg=field.name
+            )
 
 
 def test_what_is_left_out_has_its_stated_meaning() -> None:
@@ -52,7 +54,9 @@ def test_what_is_left_out_has_its_stated_meaning() -> None:
 
 
 def test_header_numbers_words_and_remarks() -> None:
-    before = "# charge_ohm = 470000\n# a remark without a value\n# marking = 47n 630V film\n# box = 00012345\n\n"
+    before = (
+        "# charge_ohm = 470000\n# a remark without a value\n# marking = 47n 630V film\n# box = 00012345\n\n"
+    )
     trace = parse_csv(text(*ROWS, before=before))
     assert trace.number("charge_ohm") == 470000.0
     assert trace.text("marking") == "47n 630V film"
@@ -130,11 +134,15 @@ def test_an_export_reads_back_to_the_same_outcome(name: str, tmp_path: Path) -> 
     again = read_csv(tmp_path / "again.csv")
     same(first, again)
     assert dict(first.header) == dict(again.header)
-    marking = {"film_47n": "47n 630V film", "electrolytic_forming": "22uF 450V electrolytic"}.get(name, "100n 400V film")
+    marking = {"film_47n": "47n 630V film", "electrolytic_forming": "22uF 450V electrolytic"}.get(
+        name, "100n 400V film"
+    )
     assert analyse(first, marking, "coupling").as_json() == analyse(again, marking, "coupling").as_json()
 
 
 def test_a_word_with_a_line_break_does_not_break_the_header() -> None:
     trace = parse_csv(text(*ROWS))
-    odd = Trace(**{**{f.name: getattr(trace, f.name) for f in fields(Trace)}, "header": {"note": "two\nlines"}})
+    odd = Trace(
+        **{**{f.name: getattr(trace, f.name) for f in fields(Trace)}, "header": {"note": "two\nlines"}}
+    )
     assert parse_csv(csv_text(odd)).text("note") == "two lines"

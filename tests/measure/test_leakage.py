@@ -17,7 +17,9 @@ CHANCE = np.random.default_rng(20260105)
 HEADER = {"fixture_ohm": 1e15, "u_gain_v": 0.0, "u_gain_i": 0.0, "charge_ohm": 400e3, "divider_ohm": 100.1e6}
 
 
-def dwell(amps: np.ndarray, volts: np.ndarray | float = 500.0, noise_A: float = 1e-12, shunt_ohm: float = 1e6) -> Trace:
+def dwell(
+    amps: np.ndarray, volts: np.ndarray | float = 500.0, noise_A: float = 1e-12, shunt_ohm: float = 1e6
+) -> Trace:
     """A dwell of 0.1 s rows with this current; the first row ends at 0.1 s."""
     size = amps.size
     nan, none = np.full(size, np.nan), np.zeros(size, dtype=bool)

@@ -59,7 +59,9 @@ def test_residuals_larger_than_assumed_widen_the_doubt() -> None:
 
 
 def test_where_no_minimum_is_found_there_is_none() -> None:
-    falling = least_squares(lambda p: np.array([np.exp(-p[0]), np.exp(-2 * p[0])]), np.array([0.0]), most_steps=5)
+    falling = least_squares(
+        lambda p: np.array([np.exp(-p[0]), np.exp(-2 * p[0])]), np.array([0.0]), most_steps=5
+    )
     assert falling is None
 
 

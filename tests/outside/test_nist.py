@@ -27,9 +27,13 @@ def fitted(model: Model, x: Sequence[float], y: Sequence[float], start: Sequence
     return found
 
 
-def agrees(found: Fit, certified: Sequence[float], deviations: Sequence[float], squares: float, digits: float) -> None:
+def agrees(
+    found: Fit, certified: Sequence[float], deviations: Sequence[float], squares: float, digits: float
+) -> None:
     assert found.parameters == pytest.approx(certified, rel=10.0**-digits)
-    assert [found.scatter * np.sqrt(found.covariance[k, k]) for k in range(len(certified))] == pytest.approx(deviations, rel=1e-5)
+    assert [found.scatter * np.sqrt(found.covariance[k, k]) for k in range(len(certified))] == pytest.approx(
+        deviations, rel=1e-5
+    )
     assert found.chi2 == pytest.approx(squares, rel=1e-9)
 
 

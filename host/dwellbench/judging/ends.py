@@ -48,7 +48,9 @@ def _short(case: Case) -> Ended:
     evidence = "The voltage did not rise although the whole current of the charge path flowed."
     if node_V is not None and amps:
         ohm = max(node_V * 1e-3 / (amps * 1e-9), 0.0)
-        evidence = f"{volts(node_V * 1e-3)} on the part while {si(amps * 1e-9, 'A')} flowed: about {si(ohm, 'ohm')}."
+        evidence = (
+            f"{volts(node_V * 1e-3)} on the part while {si(amps * 1e-9, 'A')} flowed: about {si(ohm, 'ohm')}."
+        )
     return Ended(UNFIT, "The part is shorted; it never took charge.", Finding("short", evidence), "scrap")
 
 
@@ -128,7 +130,9 @@ def _fault(case: Case) -> Ended:
     finding = Finding("fault", f"The run was ended by the fault {name}.")
     if special is not None:
         verdict, reason, also, following = special
-        return Ended(verdict, reason, Finding(also, f"The run was ended by the fault {name}."), following, AGAIN)
+        return Ended(
+            verdict, reason, Finding(also, f"The run was ended by the fault {name}."), following, AGAIN
+        )
     return Ended(UNDECIDED, f"Interrupted by the fault {name}; nothing was measured.", finding, None, AGAIN)
 
 

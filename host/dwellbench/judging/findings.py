@@ -1,6 +1,6 @@
 """What was seen, each with its evidence. Findings do not decide by themselves; the verdict reads them.
 
-Ids: short, open_lead, reversed, intermittent, burst, superlinear, forming, charging, unsettled, clipped,
+Ids: short, open_lead, reversed, intermittent, burst, rising, superlinear, forming, charging, unsettled, clipped,
 residual_charge, fixture, below_series, value_off, estimates_disagree, sag, negative_current, uncalibrated,
 interrupted, fault.
 """
@@ -82,7 +82,9 @@ def _clipped(case: Case) -> Finding | None:
         return None
     share = 100.0 * float(clipped.sum()) / float(rows.sum())
     where = ", the end of the dwell among them" if late.any() else ""
-    return Finding("clipped", f"{share:.2g} % of the rows of charge and dwell clipped{where}; they are no readings.")
+    return Finding(
+        "clipped", f"{share:.2g} % of the rows of charge and dwell clipped{where}; they are no readings."
+    )
 
 
 def _unsettled(case: Case) -> Finding | None:
@@ -91,7 +93,9 @@ def _unsettled(case: Case) -> Finding | None:
         return None
     settles_s = case.estimates.settled.settles_s
     told = f"the shunt settles in {settles_s:.3g} s" if settles_s else "no settled rows stand at its end"
-    return Finding("unsettled", f"The dwell of {case.estimates.dwell_s or 0.0:.3g} s ended before a reading: {told}.")
+    return Finding(
+        "unsettled", f"The dwell of {case.estimates.dwell_s or 0.0:.3g} s ended before a reading: {told}."
+    )
 
 
 def _events(case: Case) -> Finding | None:
@@ -112,6 +116,16 @@ def _forming(case: Case) -> Finding | None:
     return Finding(
         "forming",
         f"The current still falls by {-6000.0 * leak.slope_per_s:.2g} % a minute at the end of the dwell.",
+    )
+
+
+def _rising(case: Case) -> Finding | None:
+    """Heating, ions, a breakdown on its way: a sound part's current only falls."""
+    leak = case.leakage
+    if leak is None or not leak.rises:
+        return None
+    return Finding(
+        "rising", f"The current rises by {6000.0 * leak.slope_per_s:.2g} % a minute at the end of the dwell."
     )
 
 
@@ -138,14 +152,18 @@ def _disagree(case: Case) -> Finding | None:
     if apart is None or balance is None or curve is None:
         return None
     told = f"charge balance {si(balance.value, 'F', 4)}, charging curve {si(curve.capacitance.value, 'F', 4)}"
-    return Finding("estimates_disagree", f"The two ways to the capacitance differ by {100.0 * apart:.2g} %: {told}.")
+    return Finding(
+        "estimates_disagree", f"The two ways to the capacitance differ by {100.0 * apart:.2g} %: {told}."
+    )
 
 
 def _sag(case: Case) -> Finding | None:
     supplied_V = case.supplied_V
     if case.test_V is None or supplied_V is None or case.test_V >= _SAG * supplied_V:
         return None
-    evidence = f"Only {volts(case.test_V)} of {volts(supplied_V)} stood on the part: its leak loads the charge path."
+    evidence = (
+        f"Only {volts(case.test_V)} of {volts(supplied_V)} stood on the part: its leak loads the charge path."
+    )
     return Finding("sag", evidence)
 
 
@@ -161,7 +179,9 @@ def _residual(case: Case) -> Finding | None:
     """A part that brought a charge along: before the first step of the supply."""
     residual_mv = case.trace.number("residual_mv") or 0.0
     first = np.flatnonzero(case.trace.rows("zero", "prove", "charge"))
-    start_V = float(case.trace.v_part_V[first[0]]) if first.size and case.trace.stage[first[0]] == "zero" else 0.0
+    start_V = (
+        float(case.trace.v_part_V[first[0]]) if first.size and case.trace.stage[first[0]] == "zero" else 0.0
+    )
     found_V = max(residual_mv / 1e3, start_V)
     if found_V <= _RESIDUAL_V:
         return None
@@ -199,7 +219,9 @@ def _fixture(case: Case, rows: list[Row]) -> Finding | None:
     of_limit = bounds and leak.fixture_A > _FIXTURE_SHARE * min(bounds)
     if not of_limit and leak.fixture_A < _FIXTURE_SHARE * leak.total_A:
         return None
-    return Finding("fixture", f"The empty fixture's share is {si(leak.fixture_A, 'A')} of {si(leak.total_A, 'A')} read.")
+    return Finding(
+        "fixture", f"The empty fixture's share is {si(leak.fixture_A, 'A')} of {si(leak.total_A, 'A')} read."
+    )
 
 
 def _value_off(case: Case, rows: list[Row]) -> Finding | None:
@@ -208,7 +230,9 @@ def _value_off(case: Case, rows: list[Row]) -> Finding | None:
     if row is None or row.p is None or found is None or not marked or case.thresholds.verdict(row.p) != UNFIT:
         return None
     off = 100.0 * (found.value / marked - 1.0)
-    return Finding("value_off", f"Found {si(found.value, 'F')}, {off:+.3g} % from the marked {si(marked, 'F')}.")
+    return Finding(
+        "value_off", f"Found {si(found.value, 'F')}, {off:+.3g} % from the marked {si(marked, 'F')}."
+    )
 
 
 def _below_series(case: Case, series: list[Row]) -> Finding | None:
@@ -229,6 +253,7 @@ _LOOKS: tuple[Callable[[Case], Finding | None], ...] = (
     _unsettled,
     _events,
     _forming,
+    _rising,
     _superlinear,
     _disagree,
     _sag,

@@ -59,7 +59,9 @@ def notes(case: Case, found: list[Finding]) -> tuple[str, ...]:
     told += _times(case)
     temperature = case.temperature_C
     if temperature is not None and not _NORMAL_C[0] <= temperature <= _NORMAL_C[1]:
-        told.append(f"Measured at {temperature:.0f} C; the limits hold at 20 to 25 C and no published correction is applied.")
+        told.append(
+            f"Measured at {temperature:.0f} C; the limits hold at 20 to 25 C and no published correction is applied."
+        )
     if case.part.rated_kind == "ac":
         told.append(
             "The marking is an AC rating; it is not turned into a DC one, and the verdict holds for the DC voltage tested."
@@ -74,8 +76,12 @@ def _times(case: Case) -> list[str]:
     if case.end == "finished":
         told.append("The dwell was cut short; parts that begin to leak late are not seen.")
     if case.part.dielectric in _ABSORBING:
-        told.append("A second test soon after reads less absorption; leave the part shorted five times as long as it was held.")
+        told.append(
+            "A second test soon after reads less absorption; leave the part shorted five times as long as it was held."
+        )
     recovery = case.estimates.recovery_percent
     if recovery is not None:
-        told.append("Recovery belongs to this run's own times of charge, bleed and watching; compare only what was taken alike.")
+        told.append(
+            "Recovery belongs to this run's own times of charge, bleed and watching; compare only what was taken alike."
+        )
     return told

@@ -176,12 +176,18 @@ def _capacitance_row(case: Case, place: Place | None) -> Row | None:
         return None
     low, high = case.part.tolerance or _USUAL_TOLERANCE.get(case.part.dielectric or "", _USUAL)
     status = _MARKED if case.part.tolerance else MEMORY
-    source = "tolerance marked on the part" if case.part.tolerance else "usual tolerance of such parts, none is marked"
+    source = (
+        "tolerance marked on the part"
+        if case.part.tolerance
+        else "usual tolerance of such parts, none is marked"
+    )
     if place is not None:
         low, high = min(low, _PLACE_TOLERANCE[0]), max(high, _PLACE_TOLERANCE[1])
         source, status = "what a place of this kind tolerates", COMMON
     grade = case.grade if place is None else "place"
-    result = LimitResult("capacitance", "capacitance_F", marked, "F", grade, source, status, None, found is not None)
+    result = LimitResult(
+        "capacitance", "capacitance_F", marked, "F", grade, source, status, None, found is not None
+    )
     if found is None:
         return Row(result, None, True, True)
     u = hypot(found.u, _CLASS_II_U * marked if case.part.dielectric in ("ceramic_2", "ceramic") else 0.0)

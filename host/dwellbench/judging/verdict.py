@@ -14,7 +14,9 @@ from dwellbench.outcome import Finding
 
 _CHECK_ESR = ("electrolytic",)
 _INSIDE = ("paper", "electrolytic", "tantalum", None)  # what leaks there leaks inside, not over its surface
-_SURFACE_OHM = 1e8  # a dirty or damp surface leaks like this or less (from memory: 10 to 100 Gohm); worse is inside
+_SURFACE_OHM = (
+    1e8  # a dirty or damp surface leaks like this or less (from memory: 10 to 100 Gohm); worse is inside
+)
 _NEAR = 1.02
 _FALLS_PER_S = -0.01 / 60.0
 
@@ -231,7 +233,9 @@ def _next_fit(case: Case, ids: dict[str, str]) -> str:
     valid_V, rated_V = case.valid_to_V, case.part.rated_V
     usual_V = case.place.volts_V if case.place is not None and case.place.given_V is None else None
     wanted = [v for v in (usual_V, rated_V if case.place is None else None) if v is not None]
-    if valid_V is not None and (any(v > _NEAR * valid_V for v in wanted) or ids.keys() & {"superlinear", "sag"}):
+    if valid_V is not None and (
+        any(v > _NEAR * valid_V for v in wanted) or ids.keys() & {"superlinear", "sag"}
+    ):
         return "use_up_to"
     return "check_esr" if case.part.dielectric in _CHECK_ESR and case.esr_ohm is None else "use"
 
@@ -247,7 +251,12 @@ def _next_unfit(case: Case, rows: list[Row], ids: dict[str, str], elsewhere: boo
         case.leakage,
         any(case.thresholds.verdict(row.p or 0.0) != FIT for row in insulation_rows(rows)),
     )
-    if leaks and leak is not None and case.part.dielectric == "electrolytic" and leak.slope_per_s < _FALLS_PER_S:
+    if (
+        leaks
+        and leak is not None
+        and case.part.dielectric == "electrolytic"
+        and leak.slope_per_s < _FALLS_PER_S
+    ):
         return "re_form_then_test"
     ohm = case.estimates.insulation_ohm()
     high = ohm is not None and (ohm.value or ohm.low or 0.0) >= _SURFACE_OHM

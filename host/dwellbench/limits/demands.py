@@ -47,7 +47,9 @@ def least_ohm(place: Place) -> float | None:
     return series * tolerated if place.kind.rule == SERIES_SHARE else None
 
 
-def demand(place: Place, part: Part, test_V: float, temperature_C: float | None, capacitance_F: float | None) -> Demand | None:
+def demand(
+    place: Place, part: Part, test_V: float, temperature_C: float | None, capacitance_F: float | None
+) -> Demand | None:
     """The place's demand at the voltage and temperature of the test; None when it has none of this kind."""
     factor = warmed(part.dielectric, temperature_C, place.kind.temperature_C)
     if place.kind.rule in (GRID_SHIFT, SERIES_SHARE):

@@ -90,7 +90,9 @@ class Place:
         kind = BY_ID.get(match["id"]) if match else None
         if match is None or kind is None:
             known = ", ".join(kind.id for kind in KINDS)
-            raise UsageError(f"{text!r} is not a place this program knows.", remedy=f"Use {ANY} or one of: {known}.")
+            raise UsageError(
+                f"{text!r} is not a place this program knows.", remedy=f"Use {ANY} or one of: {known}."
+            )
         try:
             given_V = volts(match["volts"]) if match["volts"] else None
             given_ohm = ohms(match["ohms"]) if match["ohms"] else None

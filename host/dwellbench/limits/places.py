@@ -41,7 +41,9 @@ class PlaceKind:
 
 
 def _never(name: str, what: str) -> PlaceKind:
-    return PlaceKind(name, what, NEVER, None, None, None, "", "licensed practice: a part with its own safety approval")
+    return PlaceKind(
+        name, what, NEVER, None, None, None, "", "licensed practice: a part with its own safety approval"
+    )
 
 
 _SHIFT = "voltage divider of insulation and grid leak; 0.1 V tolerated is common practice, no source"
@@ -69,8 +71,12 @@ KINDS = (
         "times",
         TWENTY,
     ),
-    PlaceKind("avc", "automatic volume control line to ground", SERIES_SHARE, 50.0, 2e6, 20.0, "times", TWENTY),
-    PlaceKind("tone", "plate to ground through the tone control", SERIES_SHARE, 310.0, 100e3, 20.0, "times", TWENTY),
+    PlaceKind(
+        "avc", "automatic volume control line to ground", SERIES_SHARE, 50.0, 2e6, 20.0, "times", TWENTY
+    ),
+    PlaceKind(
+        "tone", "plate to ground through the tone control", SERIES_SHARE, 310.0, 100e3, 20.0, "times", TWENTY
+    ),
     PlaceKind(
         "supply_filter",
         "rectifier output or filter choke to ground",

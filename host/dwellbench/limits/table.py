@@ -71,7 +71,9 @@ def _insulation(
     farads: tuple[float, float] = (0.0, _INF),
 ) -> Limit:
     numbers = (mohm, mohm_uF)
-    return Limit(id, INSULATION, "less", numbers, dielectrics, grades, time_s, source, status, rules, farads=farads)
+    return Limit(
+        id, INSULATION, "less", numbers, dielectrics, grades, time_s, source, status, rules, farads=farads
+    )
 
 
 _A1 = "general radial series: the greater of 0.01 C V and 3 uA after 2 min; four makers' sheets as quoted on itecnotes.com"
@@ -130,7 +132,9 @@ _ELECTROLYTIC = (
         volts=(350, 500),
     ),
     _current("al_aged", "greater", 0.02, 6.0, _AGED, 120.0, _SHELF, DATA_SHEET, rules=True),
-    _current("al_1min", "greater", 0.03, 4.0, _NEW, 60.0, "one-minute companion of the general formula", MEMORY),
+    _current(
+        "al_1min", "greater", 0.03, 4.0, _NEW, 60.0, "one-minute companion of the general formula", MEMORY
+    ),
     _current(
         "al_high_volt",
         "plus",
@@ -189,7 +193,9 @@ _FILM = (
         DATA_SHEET,
         rules=True,
     ),
-    _insulation("pp_dc_link", None, 1e4, _PP, _ANY, "Vishay MKP1848 sheet: R C above 10 000 s after 1 min", DATA_SHEET),
+    _insulation(
+        "pp_dc_link", None, 1e4, _PP, _ANY, "Vishay MKP1848 sheet: R C above 10 000 s after 1 min", DATA_SHEET
+    ),
     _insulation("film_new", 1e3 / 0.33, 1e3, _PET, _NEW, f"polyester: {_TENTH}", COMMON, rules=True),
     _insulation(
         "film_aged",
@@ -201,9 +207,15 @@ _FILM = (
         COMMON,
         rules=True,
     ),
-    _insulation("pet_grade_1", 3e4, 1e4, ("polyester", "film"), _NEW, "IEC 60384-2 grade 1, above 100 V", UNSURE),
-    _insulation("pet_grade_2", 7.5e3, 2.5e3, ("polyester", "film"), _NEW, "IEC 60384-2 grade 2, above 100 V", UNSURE),
-    _insulation("ps_new", 1e4 / 0.33, 1e4, ("polystyrene",), _ANY, f"as polypropylene: {_TENTH}", COMMON, rules=True),
+    _insulation(
+        "pet_grade_1", 3e4, 1e4, ("polyester", "film"), _NEW, "IEC 60384-2 grade 1, above 100 V", UNSURE
+    ),
+    _insulation(
+        "pet_grade_2", 7.5e3, 2.5e3, ("polyester", "film"), _NEW, "IEC 60384-2 grade 2, above 100 V", UNSURE
+    ),
+    _insulation(
+        "ps_new", 1e4 / 0.33, 1e4, ("polystyrene",), _ANY, f"as polypropylene: {_TENTH}", COMMON, rules=True
+    ),
 )
 
 _RS198 = "EIA RS-198 style leaded parts, KEMET C32x sheets: the less of {} Gohm and 100 Mohm uF"

@@ -38,7 +38,9 @@ def calibrate(raw: RawTrace, calibration: Calibration | None = None) -> Trace:
     return Trace(
         t_s=kept.column("t") / 1e3,
         interval_s=interval_s,
-        stage=np.array([code_names("stages").get(int(code), f"stage_{code}") for code in kept.column("stage")], dtype=str),
+        stage=np.array(
+            [code_names("stages").get(int(code), f"stage_{code}") for code in kept.column("stage")], dtype=str
+        ),
         shunt_ohm=np.asarray(box.shunts_ohm)[shunt],
         v_part_V=volts.of(kept.column("sv") / kept.column("nv")),
         i_shunt_A=current.of(kept.column("si") / kept.column("ni")),

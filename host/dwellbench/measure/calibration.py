@@ -87,7 +87,10 @@ class Calibration:
         box = reference_box()
         ranges = {round(volts * 1e3): fine for fine, volts in enumerate(box.ranges_V)}
         shunts = {round(ohm): index for index, ohm in enumerate(box.shunts_ohm)}
-        amps = {(shunts[round(row["shunt_ohm"])], ranges[round(row["range_mv"])]): _scale(row) for row in data["amps"]}
+        amps = {
+            (shunts[round(row["shunt_ohm"])], ranges[round(row["range_mv"])]): _scale(row)
+            for row in data["amps"]
+        }
         if len(amps) != len(shunts) * len(ranges):
             raise ValueError("a shunt and range is missing")
         fixture_ohm = float(data["fixture_ohm"])

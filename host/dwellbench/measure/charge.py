@@ -103,7 +103,9 @@ def low_volts(trace: Trace, stretch: Stretch | None) -> Stretch | None:
     return Stretch(stretch.first + int(rows[0]), stretch.first + int(rows[-1]))
 
 
-def charge_balance(trace: Trace, circuit: Circuit, stretch: Stretch | None, leaks: Leaks | None = None) -> Estimate | None:
+def charge_balance(
+    trace: Trace, circuit: Circuit, stretch: Stretch | None, leaks: Leaks | None = None
+) -> Estimate | None:
     """Capacitance in farads, less the empty fixture's; None when no charging can be read."""
     if stretch is None:
         return None
@@ -201,7 +203,9 @@ class _Balance:
         rise_V = float(self.volts[self.full] - self.volts[0])
         siemens = 0.0
         for _ in range(4):
-            farads = (self.charge[self.full] - self.charge[0] - siemens * (self.area[self.full] - self.area[0])) / rise_V
+            farads = (
+                self.charge[self.full] - self.charge[0] - siemens * (self.area[self.full] - self.area[0])
+            ) / rise_V
             siemens = float(np.mean(amps) - farads * slope) / float(np.mean(volts))
         return siemens
 

@@ -147,13 +147,17 @@ class _Reader:
         self._first(back, lambda at: f"time does not advance (t_s = {columns['t_s'][at]})")
         self._first(values["shunt_ohm"] <= 0.0, lambda at: f"shunt_ohm is {columns['shunt_ohm'][at]}")
         for name in SPREADS:
-            values[name] = self._numbers(columns, name, empty=True) if name in columns else _unknown(len(stage))
+            values[name] = (
+                self._numbers(columns, name, empty=True) if name in columns else _unknown(len(stage))
+            )
         values.update(self._optional(columns, values, header))
         self._some_reading(stage, values["clipped"], header)
         arrays: dict[str, Any] = {**values, **{name: self._mark(columns, name, len(stage)) for name in MARKS}}
         return Trace(stage=stage, header=header, **arrays)
 
-    def _optional(self, columns: dict[str, list[str]], values: dict[str, Floats], header: dict[str, Any]) -> dict[str, Floats]:
+    def _optional(
+        self, columns: dict[str, list[str]], values: dict[str, Floats], header: dict[str, Any]
+    ) -> dict[str, Floats]:
         """Clipping, range, interval and offset, or what stands in for them."""
         t_s = values["t_s"]
         step_s = np.diff(t_s)

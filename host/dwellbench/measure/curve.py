@@ -102,8 +102,12 @@ class _Rows:
         weight = [trace.interval_s[group] for group in groups]
         self.end_s = np.array([float(trace.t_s[group[-1]]) for group in groups])
         self.dt = np.array([float(w.sum()) for w in weight])
-        self.node_V = np.array([np.average(trace.v_part_V[g], weights=w) for g, w in zip(groups, weight, strict=True)])
-        self.amps = np.array([np.average(trace.i_shunt_A[g], weights=w) for g, w in zip(groups, weight, strict=True)])
+        self.node_V = np.array(
+            [np.average(trace.v_part_V[g], weights=w) for g, w in zip(groups, weight, strict=True)]
+        )
+        self.amps = np.array(
+            [np.average(trace.i_shunt_A[g], weights=w) for g, w in zip(groups, weight, strict=True)]
+        )
         box = reference_box()
         many = np.sqrt([group.size for group in groups])
         step_V = float(trace.v_part_V[stretch.last])
@@ -117,7 +121,11 @@ class _Rows:
 
 def _fit(rows: _Rows, circuit: Circuit, guess_F: float, slew_s_per_V: float) -> Fit | None:
     """Parameters: ln C, G, Vs, t0 (seconds), ln(Rc / nominal)."""
-    supply_V = float(rows.node_V[-1] + rows.amps[-1] * circuit.charge_ohm) * circuit.charge_ohm / circuit.thevenin_ohm
+    supply_V = (
+        float(rows.node_V[-1] + rows.amps[-1] * circuit.charge_ohm)
+        * circuit.charge_ohm
+        / circuit.thevenin_ohm
+    )
     u_rc = max(hypot(circuit.u_gain_v, circuit.u_gain_i), 0.01)
     gs = 1e-3 / circuit.charge_ohm
     floor_S = -1e-6
@@ -135,7 +143,9 @@ def _fit(rows: _Rows, circuit: Circuit, guess_F: float, slew_s_per_V: float) -> 
             circuit.charge_ohm * exp(p[4]),
             slew_s_per_V,
         )
-        return np.concatenate(((node_V - rows.node_V) / rows.u_V, (amps - rows.amps) / rows.u_A, [p[4] / u_rc]))
+        return np.concatenate(
+            ((node_V - rows.node_V) / rows.u_V, (amps - rows.amps) / rows.u_A, [p[4] / u_rc])
+        )
 
     start = np.array([0.0, 0.0, supply_V, rows.first_s - slew_s_per_V * supply_V / 2.0, 0.0])
     scale = np.array([1.0, gs, supply_V, max(rows.tau_s, 0.01), 1.0])
@@ -166,7 +176,9 @@ def charged(
     return np.asarray(part_V + amps * rows.shunt_ohm), np.asarray(amps)
 
 
-def _integrals(u: Floats, start_V: float, goal_V: float, supply_V: float, tau_s: float, rise_s: float) -> tuple[Floats, Floats]:
+def _integrals(
+    u: Floats, start_V: float, goal_V: float, supply_V: float, tau_s: float, rise_s: float
+) -> tuple[Floats, Floats]:
     """Integrals since the supply's beginning (u = 0) of the part's voltage and of the supply's."""
     ramp = np.clip(u, 0.0, rise_s)
     flat = np.maximum(u - rise_s, 0.0)
@@ -193,4 +205,6 @@ def _curve(fit: Fit, rows: _Rows, circuit: Circuit) -> Curve | None:
     u_own = sqrt((farads * fit.u(0)) ** 2 + FIXTURE_U_F**2)
     shared = farads * hypot(circuit.u_gain_v, circuit.u_gain_i)
     estimate = Estimate(farads - circuit.fixture_F, u_own, shared, rows.count)
-    return Curve(estimate, float(fit.parameters[1]), fit.u(1), float(fit.parameters[3]), farads * loop, fit.scatter)
+    return Curve(
+        estimate, float(fit.parameters[1]), fit.u(1), float(fit.parameters[3]), farads * loop, fit.scatter
+    )

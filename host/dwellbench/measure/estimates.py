@@ -22,7 +22,9 @@ from dwellbench.quantity import COVERAGE_95, Quantity
 
 _APART = 0.005  # relative difference of the two capacitances that is worth a finding
 _APART_U = 2.5
-_POOR_FIT = 5.0  # scatter above which the curve is not that of a plain capacitor, and its doubt no longer statistical
+_POOR_FIT = (
+    5.0  # scatter above which the curve is not that of a plain capacitor, and its doubt no longer statistical
+)
 
 # Share of the capacitance that is absorbed in each decade of time, typical values from memory: what the
 # charge balance counts as capacitance although it is not there at 1 kHz.
@@ -182,7 +184,9 @@ def _dwell_s(trace: Trace) -> float | None:
     return None if begin_s is None else round(float(trace.t_s[trace.rows("dwell")][-1]) - begin_s, 6)
 
 
-def combine(balance: Estimate | None, curve: Curve | None, alike: float = _APART) -> tuple[Estimate | None, float | None]:
+def combine(
+    balance: Estimate | None, curve: Curve | None, alike: float = _APART
+) -> tuple[Estimate | None, float | None]:
     """Weigh the two capacitances by their own doubts. When they disagree the balance stands, with the
     difference as doubt: a disagreement is a finding, not an average. Returns (estimate, relative difference
     or None).
@@ -193,7 +197,9 @@ def combine(balance: Estimate | None, curve: Curve | None, alike: float = _APART
     apart = (other.value - balance.value) / balance.value
     u_apart = hypot(balance.u_own, other.u_own) / balance.value
     if abs(apart) > max(alike, _APART_U * u_apart):
-        return Estimate(balance.value, hypot(balance.u_own, abs(apart) * balance.value / 2.0), balance.u_shared), apart
+        return Estimate(
+            balance.value, hypot(balance.u_own, abs(apart) * balance.value / 2.0), balance.u_shared
+        ), apart
     weights = np.array([_weight(balance.u_own), _weight(other.u_own)])
     value = float(weights @ np.array([balance.value, other.value]) / weights.sum())
     return Estimate(value, float(1.0 / np.sqrt(weights.sum())), balance.u_shared, balance.rows), None
@@ -218,7 +224,9 @@ def _with_absorption(found: Estimate | None, dielectric: str | None) -> Estimate
     """
     if found is None:
         return None
-    return Estimate(found.value, hypot(found.u_own, abs(found.value) * _absorbed(dielectric)), found.u_shared, found.rows)
+    return Estimate(
+        found.value, hypot(found.u_own, abs(found.value) * _absorbed(dielectric)), found.u_shared, found.rows
+    )
 
 
 def _absorbed(dielectric: str | None) -> float:

@@ -13,10 +13,14 @@ import numpy as np
 from dwellbench.measure.settled import Settled
 from dwellbench.measure.trace import Bools, Trace
 
-_WIDE = 3.0  # times the spread that nine rows in ten stay below: ripple beats with the sampling and is no event
+_WIDE = (
+    3.0  # times the spread that nine rows in ten stay below: ripple beats with the sampling and is no event
+)
 _LEAST_CODES = 12.0
 _LEAST_ROWS = 20
-_AROUND = 4  # rows on either side whose median a row is compared with: a decay is straight over less than a second
+_AROUND = (
+    4  # rows on either side whose median a row is compared with: a decay is straight over less than a second
+)
 _LOUD = 8.0
 _RIPPLE = 0.15
 
@@ -54,7 +58,9 @@ def _jumps(trace: Trace, rows: Bools) -> Bools:
     """Rows whose mean stands far out of the median of the rows around it."""
     at = np.flatnonzero(rows)
     amps = trace.i_shunt_A[at]
-    near = np.lib.stride_tricks.sliding_window_view(np.pad(amps, _AROUND, mode="reflect", reflect_type="odd"), 2 * _AROUND + 1)
+    near = np.lib.stride_tricks.sliding_window_view(
+        np.pad(amps, _AROUND, mode="reflect", reflect_type="odd"), 2 * _AROUND + 1
+    )
     off = amps - np.median(near, axis=1)
     code_A = trace.range_V[at] / 32768.0 / trace.shunt_ohm[at]
     usual = 1.4826 * float(np.median(np.abs(off)))

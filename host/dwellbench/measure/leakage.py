@@ -26,7 +26,10 @@ _LEAST_ROWS = 5
 _SHARE = 0.15  # of the time at voltage, its end, is averaged
 _WINDOW_S = (3.0, 15.0)
 _SHAPE_U = 0.3  # of what a row is brought along the decay: the shape is not quite 1/t
-_BEAT_ROWS = 5.0  # rows that do not scatter independently: ripple beats with the sampling over about this many
+_RISES = 0.03  # t di/dt as a share of the current, above which it counts as rising
+_BEAT_ROWS = (
+    5.0  # rows that do not scatter independently: ripple beats with the sampling over about this many
+)
 _SLOPE_FROM = 0.5  # the slope is taken over the last half of the dwell
 _DRIFT_V_PER_S = 1e-4  # of the warm supply: what C dV/dt may hide below the voltage's own noise
 _LOUD = 6.0  # deviations of a row from its neighbours' median above which it is a burst, not noise
@@ -52,6 +55,7 @@ class Leakage:
     absorbed_A: float
     u_absorbed_A: float
     slope_per_s: float  # relative change of the current per second at the end
+    rises: bool  # beyond noise, and by more than it should stand still
     shunt_ohm: float
     rows: int
 
@@ -134,6 +138,7 @@ def _read(
         absorbed_A=max(decay.part_A, 0.0),
         u_absorbed_A=decay.u_part_A,
         slope_per_s=-decay.part_A / decay.since_s / current if current else 0.0,
+        rises=-decay.part_A > max(3.0 * decay.u_part_A, _RISES * abs(current)),
         shunt_ohm=float(trace.shunt_ohm[quiet][-1]),
         rows=int(quiet.sum()),
     )
@@ -200,10 +205,14 @@ def _robust_line(x: NDArray[np.int64], y: Floats) -> tuple[float, float]:
 def _late(trace: Trace, settled: Settled, middle_s: Floats, until_s: float) -> Bools:
     """Settled rows of the last half of the time at voltage, on the shunt of the end."""
     rows = settled.readings & (middle_s >= _SLOPE_FROM * until_s) & (middle_s <= until_s)
-    return np.asarray(rows & (trace.shunt_ohm == trace.shunt_ohm[rows][-1]) & (trace.range_V == trace.range_V[rows][-1]))
+    return np.asarray(
+        rows & (trace.shunt_ohm == trace.shunt_ohm[rows][-1]) & (trace.range_V == trace.range_V[rows][-1])
+    )
 
 
-def _charging(trace: Trace, settled: Settled, middle_s: Floats, until_s: float, capacitance_F: float) -> tuple[float, float]:
+def _charging(
+    trace: Trace, settled: Settled, middle_s: Floats, until_s: float, capacitance_F: float
+) -> tuple[float, float]:
     """C dV/dt at the end and its doubt: taken off only where the voltage's slope stands out of its noise."""
     rows = _late(trace, settled, middle_s, until_s)
     if int(rows.sum()) < _LEAST_ROWS:

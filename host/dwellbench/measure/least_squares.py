@@ -39,7 +39,9 @@ class Line:
     def u(self, x: float) -> float:
         """Standard uncertainty of the line at `x` (JCGM 100, H.3.4)."""
         dx = x - self.x0
-        return sqrt(max(self.u_at**2 + (dx * self.u_slope) ** 2 + 2.0 * dx * self.r * self.u_at * self.u_slope, 0.0))
+        return sqrt(
+            max(self.u_at**2 + (dx * self.u_slope) ** 2 + 2.0 * dx * self.r * self.u_at * self.u_slope, 0.0)
+        )
 
 
 def line(x: Floats, y: Floats, x0: float = 0.0) -> Line:
@@ -79,7 +81,12 @@ class Fit:
 
 
 def least_squares(
-    residuals: Residuals, start: Floats, scale: Floats | None = None, *, still: float = _STILL, most_steps: int = _MOST_STEPS
+    residuals: Residuals,
+    start: Floats,
+    scale: Floats | None = None,
+    *,
+    still: float = _STILL,
+    most_steps: int = _MOST_STEPS,
 ) -> Fit | None:
     """Minimise the sum of squares of `residuals(parameters)`, shape (m,), from `start`, shape (n,).
 

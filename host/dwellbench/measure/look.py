@@ -34,7 +34,9 @@ def low_leak(trace: Trace, capacitance_F: float | None) -> LowLeak | None:
     if rows.size < _ROWS:
         return None
     across_V = float(np.mean(trace.across_V[rows]))
-    slope = float(np.polynomial.polynomial.polyfit(trace.t_s[rows] - trace.t_s[rows[0]], trace.across_V[rows], 1)[1])
+    slope = float(
+        np.polynomial.polynomial.polyfit(trace.t_s[rows] - trace.t_s[rows[0]], trace.across_V[rows], 1)[1]
+    )
     amps = float(np.mean(trace.i_shunt_A[rows]))
     charging_A = (capacitance_F or 0.0) * slope
     offset_A, spread_A = float(trace.u_offset_A[rows].max()), float(np.ptp(trace.i_shunt_A[rows])) / 2.0

@@ -47,7 +47,9 @@ def _stands_out(leakage: Leakage) -> bool:
     return leakage.total_A > 3.0 * leakage.u_read_A
 
 
-def recovery_percent(trace: Trace, circuit: Circuit, capacitance_F: float | None, volts_V: float) -> Quantity | None:
+def recovery_percent(
+    trace: Trace, circuit: Circuit, capacitance_F: float | None, volts_V: float
+) -> Quantity | None:
     """100 x recovered voltage / charging voltage, with what the divider drained during the watching put back.
 
     q = C V + integral of V / divider: without the second term the divider makes a small part look free of
@@ -69,4 +71,8 @@ def recovery_percent(trace: Trace, circuit: Circuit, capacitance_F: float | None
         0.05 * float(drained[peak]),
     )
     percent, u = 100.0 * float(back[peak]) / volts_V, 100.0 * u_V / volts_V
-    return Quantity.of(percent, u) if percent > COVERAGE_95 * u else Quantity.below(max(percent, 0.0) + COVERAGE_95 * u)
+    return (
+        Quantity.of(percent, u)
+        if percent > COVERAGE_95 * u
+        else Quantity.below(max(percent, 0.0) + COVERAGE_95 * u)
+    )

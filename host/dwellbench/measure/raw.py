@@ -44,7 +44,9 @@ class RawTrace:
         """
         unique = {int(row[0]): tuple(row) for row in rows}
         if any(len(row) != len(COLUMNS) for row in unique.values()):
-            raise TraceError("A sample row has too few or too many members.", remedy="Take the rows as the box sent them.")
+            raise TraceError(
+                "A sample row has too few or too many members.", remedy="Take the rows as the box sent them."
+            )
         ordered = [unique[n] for n in sorted(unique)]
         table = np.array(ordered, dtype=np.int64).reshape(len(ordered), len(COLUMNS))
         return cls(table, dict(info or {}))

@@ -35,5 +35,7 @@ def settled(trace: Trace, circuit: Circuit, capacitance_F: float | None) -> Sett
     for at in np.flatnonzero(stepped & trace.rows("charge", "dwell")):
         settles_s = SETTLE_TAUS * (float(trace.shunt_ohm[at]) + circuit.thevenin_ohm) * (capacitance_F or 0.0)
         begin_s = float(trace.t_s[at] - trace.interval_s[at])
-        blank |= (np.arange(len(trace)) >= at) & (trace.t_s <= begin_s + settles_s + 1.001 * trace.interval_s[at])
+        blank |= (np.arange(len(trace)) >= at) & (
+            trace.t_s <= begin_s + settles_s + 1.001 * trace.interval_s[at]
+        )
     return Settled(dwell, dwell & ~blank & trace.readable, settles_s)

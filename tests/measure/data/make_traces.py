@@ -92,9 +92,13 @@ CASES = [
         dwell_s=120.0,
         dwell_shunt_ohm=560.0,
     ),
-    Case("superlinear", 100e-9, 1e10, 602.4, rises=(600.0, 5e7, 5.0), ramp_V_per_s=100.0, dwell_shunt_ohm=560.0),
+    Case(
+        "superlinear", 100e-9, 1e10, 602.4, rises=(600.0, 5e7, 5.0), ramp_V_per_s=100.0, dwell_shunt_ohm=560.0
+    ),
     Case("open_lead", 1e-12, 1e14, 401.6, connected=False, charge_s=0.7),
-    Case("bursts", 100e-9, 2e10, 401.6, [(0.3, 0.0006)], dwell_shunt_ohm=1e5, bursts_s=(4.0, 7.3, 11.0, 15.6)),
+    Case(
+        "bursts", 100e-9, 2e10, 401.6, [(0.3, 0.0006)], dwell_shunt_ohm=1e5, bursts_s=(4.0, 7.3, 11.0, 15.6)
+    ),
     Case(
         "clipped",
         50e-9,
@@ -137,7 +141,11 @@ class Bench:
         """One step: `feed_V` behind the charge path (None: open), bleed closed or not, `extra_A` through a burst."""
         case, dt = self.case, STEP_S
         farads = case.capacitance_F + FIXTURE_F
-        to_node = (0.0 if feed_V is None else 1.0 / CHARGE_OHM) + 1.0 / DIVIDER_OHM + (1.0 / BLEED_OHM if bleed else 0.0)
+        to_node = (
+            (0.0 if feed_V is None else 1.0 / CHARGE_OHM)
+            + 1.0 / DIVIDER_OHM
+            + (1.0 / BLEED_OHM if bleed else 0.0)
+        )
         push = 0.0 if feed_V is None else feed_V / CHARGE_OHM
         # current into the part as a line in its voltage at the end of the step: node = (push - I) / to_node
         across_S = farads / dt + self.leak_S()
@@ -233,7 +241,9 @@ def make(case: Case) -> dict[str, float]:
     if ramp is None:
         writer.stage(bench, "charge", 0.1, lambda at: 0.0, 560.0, 1.024)
     writer.stage(bench, "charge", charge_s, feed, case.ramp_shunt_ohm, 1.024)
-    writer.stage(bench, "dwell", case.dwell_s, lambda at: case.supply_V, case.dwell_shunt_ohm, case.dwell_range_V)
+    writer.stage(
+        bench, "dwell", case.dwell_s, lambda at: case.supply_V, case.dwell_shunt_ohm, case.dwell_range_V
+    )
     truth = {
         "capacitance_F": case.capacitance_F if case.connected else 0.0,
         "volts_V": bench.part_V,
@@ -245,7 +255,9 @@ def make(case: Case) -> dict[str, float]:
     if case.recovery_s:
         writer.stage(bench, "recovery", case.recovery_s, lambda at: None, 1e6, 1.024)
         truth["recovered_V"] = bench.part_V
-    head = ["t_s,stage,shunt_ohm,v_part_V,i_shunt_A,v_supply_V,clipped,v_min_V,v_max_V,i_min_A,i_max_A,range_V"]
+    head = [
+        "t_s,stage,shunt_ohm,v_part_V,i_shunt_A,v_supply_V,clipped,v_min_V,v_max_V,i_min_A,i_max_A,range_V"
+    ]
     stated = ["# fixture_ohm = 1e12", "# temperature_C = 23", "# u_gain_v = 0.001", "# u_gain_i = 0.001"]
     (HERE / f"{case.name}.csv").write_text("\n".join([*stated, *head, *writer.rows]) + "\n", encoding="utf-8")
     return truth
