@@ -9,15 +9,23 @@ from dwellbench.bench import Bench, open_box
 from dwellbench.part import Part
 from dwellbench.plan import Plan
 
-FILM = "capacitance_F = 47e-9\nleakage_ohm = 3e11\nabsorption = [[0.1, 0.0008], [1.0, 0.0008], [10.0, 0.0008]]\n"
-FILM_1U = "capacitance_F = 1e-6\nleakage_ohm = 1e10\nabsorption = [[0.1, 0.0008], [1.0, 0.0008], [10.0, 0.0008]]\n"
+FILM = (
+    "capacitance_F = 47e-9\nleakage_ohm = 3e11\nabsorption = [[0.1, 0.0008], [1.0, 0.0008], [10.0, 0.0008]]\n"
+)
+FILM_1U = (
+    "capacitance_F = 1e-6\nleakage_ohm = 1e10\nabsorption = [[0.1, 0.0008], [1.0, 0.0008], [10.0, 0.0008]]\n"
+)
 SHORT = "short_ohm = 220.0\n"
 OPEN = "open_lead = true\n"
 
 
 def scenario(folder: Path, *parts: str, extra: str = "") -> str:
     """Write a scenario of parts (bodies of [[part]]) and return its emu:// URL without a query."""
-    text = "\n".join(f'[[part]]\nlabel = "P{number}"\n{body}' for number, body in enumerate(parts, 1)) + "\n" + extra
+    text = (
+        "\n".join(f'[[part]]\nlabel = "P{number}"\n{body}' for number, body in enumerate(parts, 1))
+        + "\n"
+        + extra
+    )
     path = folder / f"scenario{len(list(folder.iterdir()))}.toml"
     path.write_text(text, encoding="utf-8")
     return f"emu://{path}"
@@ -47,6 +55,8 @@ def world(box: Bench) -> Any:
     return box._link._port.box.world
 
 
-def plan(box: Bench, marking: str = "47n 630V film", *, volts: float | None = 400.0, dwell: float = 5.0) -> Plan:
+def plan(
+    box: Bench, marking: str = "47n 630V film", *, volts: float | None = 400.0, dwell: float = 5.0
+) -> Plan:
     """A short plan."""
     return Plan.make(Part.parse(marking), None, box.ratings, volts=volts, dwell=dwell)

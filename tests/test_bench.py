@@ -10,11 +10,11 @@ import time
 from pathlib import Path
 
 import pytest
+from tests.helpers import FILM, SHORT, fault, plan, ready, scenario, truth
+
 from dwellbench.bench import refuse_looks
 from dwellbench.errors import RefusedError, StoppedError, UsageError
 from dwellbench.records import Store
-
-from tests.helpers import FILM, SHORT, fault, plan, ready, scenario, truth
 
 
 def test_a_part_from_its_marking_to_its_record(tmp_path: Path) -> None:
@@ -126,7 +126,11 @@ def test_a_host_killed_in_mid_run_leaves_a_safe_box_and_every_sample_that_had_co
     with subprocess.Popen(serve, env=environment, stdout=subprocess.DEVNULL) as server:
         try:
             _wait(lambda: link.exists())
-            host = subprocess.Popen([sys.executable, "-c", _KILLED, str(link), str(database)], env=environment, stdout=subprocess.DEVNULL)
+            host = subprocess.Popen(
+                [sys.executable, "-c", _KILLED, str(link), str(database)],
+                env=environment,
+                stdout=subprocess.DEVNULL,
+            )
             _wait(lambda: database.exists() and _kept(database) >= 100)
             before = _kept(database)
             host.send_signal(signal.SIGKILL)

@@ -10,11 +10,19 @@ from pathlib import Path
 from typing import Any
 
 import pytest
-from dwellbench.bench import Bench, open_box
-from dwellbench.errors import FaultError, LinkError, NoBoxError, RefusedError, StoppedError, UsageError, WrongBoxError
-from dwellbench.wire.wire_log import read_log
-
 from tests.helpers import FILM, FILM_1U, OPEN, SHORT, fault, plan, ready, scenario, truth, world
+
+from dwellbench.bench import Bench, open_box
+from dwellbench.errors import (
+    FaultError,
+    LinkError,
+    NoBoxError,
+    RefusedError,
+    StoppedError,
+    UsageError,
+    WrongBoxError,
+)
+from dwellbench.wire.wire_log import read_log
 
 
 @pytest.fixture
@@ -49,7 +57,9 @@ def test_nothing_there() -> None:
     assert caught.value.remedy
 
 
-@pytest.mark.parametrize("url", ["nonsense://x", "emu://film?sed=1", "emu://film?seed=x", "emu://no-such-scenario"])
+@pytest.mark.parametrize(
+    "url", ["nonsense://x", "emu://film?sed=1", "emu://film?seed=x", "emu://no-such-scenario"]
+)
 def test_a_url_that_is_none(url: str) -> None:
     with pytest.raises(UsageError) as caught:
         open_box(url)
@@ -124,7 +134,9 @@ def test_a_run_to_its_end_gives_every_event_once(film: Bench) -> None:
 
 
 @pytest.mark.parametrize(("body", "end"), [(SHORT, "short"), (OPEN, "open")])
-def test_a_part_that_never_takes_charge_ends_in_order_and_not_in_lockout(tmp_path: Path, body: str, end: str) -> None:
+def test_a_part_that_never_takes_charge_ends_in_order_and_not_in_lockout(
+    tmp_path: Path, body: str, end: str
+) -> None:
     with ready(scenario(tmp_path, body) + "?seed=5") as box:
         run = box.start(plan(box))
         list(run)
@@ -154,7 +166,11 @@ def test_micropython_gives_the_same_bytes_and_the_same_verdict(tmp_path: Path) -
         with open_box(url + interpreter, wire_log=log) as box:
             box.settle()
             fixed = plan(box, dwell=10.0)
-            outcome = box.test("47n 630V film", "coupling@310V/470k", plan=type(fixed)(**{**fixed.__dict__, "run_key": "same"}))
+            outcome = box.test(
+                "47n 630V film",
+                "coupling@310V/470k",
+                plan=type(fixed)(**{**fixed.__dict__, "run_key": "same"}),
+            )
         seen.append((outcome.verdict, outcome.reason, log.read_bytes()))
     assert seen[0] == seen[1]
 
@@ -259,7 +275,9 @@ class Cable:
 
 
 @pytest.mark.parametrize("gone_s", [0.4, 0.9, 1.4])
-def test_a_link_cut_in_mid_run_and_restored_loses_no_sample(film: Bench, monkeypatch: pytest.MonkeyPatch, gone_s: float) -> None:
+def test_a_link_cut_in_mid_run_and_restored_loses_no_sample(
+    film: Bench, monkeypatch: pytest.MonkeyPatch, gone_s: float
+) -> None:
     cable = Cable(film)
     read, write = cable.link.read, cable.link.write
 

@@ -33,7 +33,11 @@ ORDER = (
     {"cli"},
 )
 RANK = {name: rank for rank, names in enumerate(ORDER) for name in names}
-ASIDE = {"emulator": "plan", "firmware_build": "assets", "firmware_fold": "assets"}  # name: the last layer it may import
+ASIDE = {
+    "emulator": "plan",
+    "firmware_build": "assets",
+    "firmware_fold": "assets",
+}  # name: the last layer it may import
 OPEN_TO_EMULATOR = ("emulator/", "cli/")
 
 # What MicroPython has, beside the ports' own modules in the board files.
@@ -88,7 +92,17 @@ def test_numpy_is_the_only_library_of_the_computing_layers() -> None:
     import sys
 
     for path in FILES:
-        if layer(path) in ("quantity", "marking", "part", "measure", "limits", "plan", "outcome", "judging", "judge"):
+        if layer(path) in (
+            "quantity",
+            "marking",
+            "part",
+            "measure",
+            "limits",
+            "plan",
+            "outcome",
+            "judging",
+            "judge",
+        ):
             tops = {name.split(".")[0] for name in imports(path)}
             assert tops - allowed - set(sys.stdlib_module_names) == set(), path
 
@@ -115,7 +129,9 @@ def test_the_wheel_carries_firmware_and_protocol(tmp_path: Path) -> None:
     names = set(zipfile.ZipFile(wheel).namelist())
     for folder in ("device", "protocol"):
         for path in (ROOT / folder).rglob("*"):
-            hidden = any(part.startswith(".") or part == "__pycache__" for part in path.relative_to(ROOT).parts)
+            hidden = any(
+                part.startswith(".") or part == "__pycache__" for part in path.relative_to(ROOT).parts
+            )
             if path.is_file() and not hidden:
                 assert f"dwellbench/_{folder}/{path.relative_to(ROOT / folder).as_posix()}" in names
     assert "dwellbench/py.typed" in names
@@ -127,7 +143,18 @@ def test_the_wheel_carries_firmware_and_protocol(tmp_path: Path) -> None:
 def test_the_top_level_holds_what_the_house_has() -> None:
     import subprocess
 
-    listed = subprocess.run(["git", "ls-files"], cwd=ROOT, capture_output=True, text=True, check=False).stdout.splitlines()
+    listed = subprocess.run(
+        ["git", "ls-files"], cwd=ROOT, capture_output=True, text=True, check=False
+    ).stdout.splitlines()
     tops = {name.split("/")[0] for name in listed if not name.startswith(".")}
-    house = {"README.md", "DEVELOPERS.md", "pyproject.toml", "device", "host", "protocol", "tests", "hardware_notes"}
+    house = {
+        "README.md",
+        "DEVELOPERS.md",
+        "pyproject.toml",
+        "device",
+        "host",
+        "protocol",
+        "tests",
+        "hardware_notes",
+    }
     assert tops <= house

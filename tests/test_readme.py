@@ -8,6 +8,7 @@ import tomllib
 from pathlib import Path
 
 import pytest
+
 from dwellbench.cli import main as cli
 from dwellbench.cli.context import Options, _take_file
 
@@ -32,7 +33,9 @@ def bench(tmp_path_factory: pytest.TempPathFactory) -> Path:
 
 
 @pytest.mark.parametrize("line", COMMANDS)
-def test_a_command_of_readme_runs(line: str, bench: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> None:
+def test_a_command_of_readme_runs(
+    line: str, bench: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
     monkeypatch.chdir(bench)
     monkeypatch.setenv("DWELLBENCH_RECORDS", str(bench / "records.db"))
     monkeypatch.setenv("XDG_CONFIG_HOME", str(bench))
@@ -40,7 +43,9 @@ def test_a_command_of_readme_runs(line: str, bench: Path, monkeypatch: pytest.Mo
     assert status in (0, 3, 4), capsys.readouterr().err
 
 
-def test_the_python_example_runs(bench: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> None:
+def test_the_python_example_runs(
+    bench: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
     monkeypatch.chdir(bench)
     (example,) = [block for kind, block in BLOCKS if kind == "python"]
     exec(compile(example, "README.md", "exec"), {})

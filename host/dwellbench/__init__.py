@@ -36,7 +36,19 @@ _PUBLIC = {
     "Store": "dwellbench.records",
     "DwellbenchError": "dwellbench.errors",
 }
-__all__ = ["__version__", *_PUBLIC]
+__all__ = [
+    "Bench",
+    "Box",
+    "DwellbenchError",
+    "Outcome",
+    "Part",
+    "Plan",
+    "Quantity",
+    "Store",
+    "__version__",
+    "analyse",
+    "open_box",
+]
 
 if TYPE_CHECKING:
     from dwellbench.bench import Bench, open_box

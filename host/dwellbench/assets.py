@@ -17,7 +17,8 @@ def _find(name: str, marker: str) -> Path:
         if (place / marker).is_file():
             return place
     raise BugError(
-        f"The installed package lacks its folder {name!r}.", remedy="Install dwellbench again from a whole wheel or checkout."
+        f"The installed package lacks its folder {name!r}.",
+        remedy="Install dwellbench again from a whole wheel or checkout.",
     )
 
 

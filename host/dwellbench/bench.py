@@ -6,7 +6,6 @@ The record is opened before the box is asked to run, and rows go into it as they
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import asdict
 from datetime import UTC, datetime
 from pathlib import Path
@@ -46,7 +45,9 @@ def refuse_looks(looks: str | None) -> None:
     if looks is None or looks == "sound":
         return
     if looks not in LOOKS:
-        raise UsageError(f"{looks!r} is not a word for how a part looks.", remedy=f"Use one of: {', '.join(LOOKS)}.")
+        raise UsageError(
+            f"{looks!r} is not a word for how a part looks.", remedy=f"Use one of: {', '.join(LOOKS)}."
+        )
     raise UsageError(
         f"A {looks} part is not energised.",
         remedy="Scrap it; bag it if it leaks, and do not open it: old oil-filled parts may hold PCB.",
@@ -119,7 +120,12 @@ def _open(
         role=role,
         grade=grade,
         plan=asdict(plan),
-        box={"box": identity.box, "model": identity.model, "firmware": identity.firmware, "build": identity.build},
+        box={
+            "box": identity.box,
+            "model": identity.model,
+            "firmware": identity.firmware,
+            "build": identity.build,
+        },
         calibration=calibration,
         simulated=identity.simulated,
         label=label,
@@ -204,7 +210,12 @@ def _judged(
 
 
 def _stamps(
-    box: Box, run: Run, calibration: dict[str, Any] | None, role: str | None, began: str, writer: RunWriter | None
+    box: Box,
+    run: Run,
+    calibration: dict[str, Any] | None,
+    role: str | None,
+    began: str,
+    writer: RunWriter | None,
 ) -> dict[str, Any]:
     return {
         "record": None if writer is None else f"R{writer.id}",

@@ -16,9 +16,9 @@ from collections import deque
 from collections.abc import Callable
 from dataclasses import dataclass, field
 from types import TracebackType
-from typing import Any
+from typing import Any, Self
 
-from dwellbench.errors import FaultError, LinkError, NoBoxError, RefusedError, WrongBoxError
+from dwellbench.errors import FaultError, LinkError, NoBoxError, WrongBoxError
 from dwellbench.measure.calibrate import calibrate
 from dwellbench.measure.calibration import Calibration
 from dwellbench.measure.trace import Trace
@@ -35,7 +35,9 @@ ANSWER_S = 1.0  # the box answers within a few periods; a second covers a busy U
 TRIES = 3
 HELLO_S = 3.0
 KEEPALIVE_S = 0.5  # a quarter of the silence that ends a run
-RECONNECT_S = 30.0  # what the box recorded stays for two minutes; half a minute of trying, then the user is told
+RECONNECT_S = (
+    30.0  # what the box recorded stays for two minutes; half a minute of trying, then the user is told
+)
 RETRY_S = 0.25
 _POWERED = ("charge", "dwell", "measure", "form")
 WAKE_S = 180.0  # proving discharge after power-up takes half a minute at most
@@ -93,10 +95,12 @@ class Box:
             self.close()
             raise
 
-    def __enter__(self) -> Box:
+    def __enter__(self) -> Self:
         return self
 
-    def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None) -> None:
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
         self.close()
 
     def close(self) -> None:
@@ -132,7 +136,9 @@ class Box:
                 f"What answers at {self.url} is not a dwellbench box.",
                 remedy="Choose another port with --box; load the firmware if it is a bare board.",
             )
-        raise NoBoxError(f"Nothing answers at {self.url}.", remedy="Is the box switched on, and is this its port?")
+        raise NoBoxError(
+            f"Nothing answers at {self.url}.", remedy="Is the box switched on, and is this its port?"
+        )
 
     def _accept(self, hello: dict[str, Any]) -> Identity:
         major = hello["protocol"][0]
@@ -157,7 +163,9 @@ class Box:
                 return answer.result
             if isinstance(answer, Refusal) and answer.id is not None:
                 raise refused(answer)
-        raise LinkError(f"The box at {self.url} does not answer {method!r}.", remedy="Check the cable, then try again.")
+        raise LinkError(
+            f"The box at {self.url} does not answer {method!r}.", remedy="Check the cable, then try again."
+        )
 
     def _try(self, method: str, params: dict[str, Any]) -> Answer | Refusal | None:
         data, id_ = self._client.request(method, params)
@@ -202,7 +210,9 @@ class Box:
 
     # -- waiting
 
-    def wait_for(self, done: Callable[[dict[str, Any]], bool], seconds: float, every: float = 0.25) -> dict[str, Any] | None:
+    def wait_for(
+        self, done: Callable[[dict[str, Any]], bool], seconds: float, every: float = 0.25
+    ) -> dict[str, Any] | None:
         """Ask for the status until `done(status)`; return it, or None when the time is over."""
         until = self.clock() + seconds
         while True:
@@ -228,7 +238,9 @@ class Box:
             self.abort()
         status = self.wait_for(lambda now: now["state"] in ("rest", "lockout"), seconds)
         if status is None:
-            raise FaultError("The box has not proven the part discharged.", remedy="Leave the lid closed and wait.")
+            raise FaultError(
+                "The box has not proven the part discharged.", remedy="Leave the lid closed and wait."
+            )
         if status["state"] == "lockout":
             raise fault(status["fault"] or "not_discharged")
         return status
@@ -378,7 +390,9 @@ class Box:
     def _same(self, link: Link, hello: dict[str, Any]) -> Link:
         if hello["box"] != self.identity.box:
             link.close()
-            raise WrongBoxError(f"Another box is at {self.url} now.", remedy="Connect the box that the run began on.")
+            raise WrongBoxError(
+                f"Another box is at {self.url} now.", remedy="Connect the box that the run began on."
+            )
         if hello["boot"] != self.identity.boot:
             self.restarted = True
             self.identity = Identity.from_hello(hello)

@@ -9,9 +9,9 @@ from typing import Any
 
 import fastjsonschema
 import pytest
-from dwellbench.cli import main as cli
-
 from tests.helpers import FILM, OPEN, SHORT, fault, scenario
+
+from dwellbench.cli import main as cli
 
 Run = Callable[..., tuple[int, str, str]]
 OUTCOME = json.loads((Path(cli.__file__).parents[1] / "outcome.schema.json").read_text("utf-8"))
@@ -100,7 +100,10 @@ def test_box_says_who_it_is_and_whether_it_may_be_touched(run: Run) -> None:
 
 
 def test_a_lockout_is_told_with_its_remedy_and_acknowledged(run: Run, tmp_path: Path) -> None:
-    url = scenario(tmp_path, FILM, extra=fault("stop_pressed", 12.0, for_s=5.0)) + f"?state={tmp_path / 'kept.json'}"
+    url = (
+        scenario(tmp_path, FILM, extra=fault("stop_pressed", 12.0, for_s=5.0))
+        + f"?state={tmp_path / 'kept.json'}"
+    )
     status, out, _ = run("--box", url, "test", "47n 630V film", "--dwell", "30", "--yes", "--json")
     assert (status, json.loads(out)["fault"]) == (4, "stop")
     status, out, _ = run("--box", url, "box")
@@ -131,7 +134,10 @@ def test_the_demo_ends_with_every_verdict_right_for_its_invented_truth(run: Run,
         assert line["outcome"]["verdict"] == line["expect"], line["label"]
         assert line["outcome"]["simulated"]
     assert lines[-1]["as_expected"] == lines[-1]["parts"] >= 10
-    assert json.loads(run("records", "list", "--json", "--records", str(tmp_path / "demo.db"))[1])["total"] == lines[-1]["parts"]
+    assert (
+        json.loads(run("records", "list", "--json", "--records", str(tmp_path / "demo.db"))[1])["total"]
+        == lines[-1]["parts"]
+    )
 
 
 def test_a_wire_log_keeps_every_line(run: Run, tmp_path: Path) -> None:
@@ -168,7 +174,9 @@ WRONG: list[tuple[tuple[str, ...], int, str]] = [
 
 
 @pytest.mark.parametrize(("arguments", "status", "words"), WRONG, ids=[" ".join(row[0]) for row in WRONG])
-def test_wrong_things_typed_get_one_clear_sentence(run: Run, arguments: tuple[str, ...], status: int, words: str) -> None:
+def test_wrong_things_typed_get_one_clear_sentence(
+    run: Run, arguments: tuple[str, ...], status: int, words: str
+) -> None:
     got, out, err = run(*arguments)
     assert got == status
     assert words in err
@@ -192,9 +200,16 @@ def test_records_that_cannot_be_used(run: Run, tmp_path: Path) -> None:
 def test_the_configuration_file_is_read_and_checked(run: Run, tmp_path: Path) -> None:
     good = tmp_path / "good.toml"
     good.write_text('box = "emu://film"\n[places]\nmine = "coupling@250V/1M"\n[thresholds]\naccept = 0.9\n')
-    status, out, _ = run("--config", str(good), "test", "47n 630V film", "--role", "mine", "--dwell", "10", "--yes", "--json")
+    status, out, _ = run(
+        "--config", str(good), "test", "47n 630V film", "--role", "mine", "--dwell", "10", "--yes", "--json"
+    )
     assert (status, json.loads(out)["test_V"] < 260) == (0, True)
-    for text, words in (("bx = 1\n", "bx"), ("box = 1\n", "box"), ("[thresholds]\naccept = 2.0\n", "accept"), ("box = [", "toml")):
+    for text, words in (
+        ("bx = 1\n", "bx"),
+        ("box = 1\n", "box"),
+        ("[thresholds]\naccept = 2.0\n", "accept"),
+        ("box = [", "toml"),
+    ):
         wrong = tmp_path / "wrong.toml"
         wrong.write_text(text)
         status, _, err = run("--config", str(wrong), "box")

@@ -12,9 +12,10 @@ from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
 
-import dwellbench  # noqa: F401  (makes emu:// known)
 import pytest
 import serial
+
+import dwellbench  # noqa: F401  (makes emu:// known)
 from dwellbench.bench import open_box
 from dwellbench.emulator import lockstep
 from dwellbench.emulator.handlers.protocol_emu import ENDLESS_S
@@ -78,7 +79,12 @@ def test_what_is_left_unread_is_read_later(port: Any) -> None:
 def test_closed_is_closed(port: Any) -> None:
     port.close()
     port.close()
-    for call in (lambda: port.read(1), lambda: port.write(b"x"), lambda: port.in_waiting, lambda: port.flush()):
+    for call in (
+        lambda: port.read(1),
+        lambda: port.write(b"x"),
+        lambda: port.in_waiting,
+        lambda: port.flush(),
+    ):
         with pytest.raises(serial.SerialException):
             call()
     port.open()
@@ -157,8 +163,21 @@ def served(tmp_path: Path) -> Iterator[Any]:
 
     def start(*arguments: str) -> tuple[subprocess.Popen[str], str]:
         environment = {**os.environ, "PYTHONPATH": os.pathsep.join(sys.path)}
-        command = [sys.executable, "-c", SERVE, "emulate", "--json", "--seed", "3", "--speed", "40", *arguments]
-        process = subprocess.Popen(command, env=environment, stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True)
+        command = [
+            sys.executable,
+            "-c",
+            SERVE,
+            "emulate",
+            "--json",
+            "--seed",
+            "3",
+            "--speed",
+            "40",
+            *arguments,
+        ]
+        process = subprocess.Popen(
+            command, env=environment, stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True
+        )
         processes.append(process)
         assert process.stdout is not None
         line = process.stdout.readline()
@@ -263,7 +282,10 @@ def test_a_missing_interpreter_says_what_to_install(monkeypatch: pytest.MonkeyPa
     [
         ("emu://film?seed=7", Opening("film", 7)),
         ("emu:///tmp/a.toml", Opening("/tmp/a.toml")),
-        ("emu://film?state=/tmp/s.json&interpreter=micropython", Opening("film", None, Path("/tmp/s.json"), "micropython")),
+        (
+            "emu://film?state=/tmp/s.json&interpreter=micropython",
+            Opening("film", None, Path("/tmp/s.json"), "micropython"),
+        ),
     ],
 )
 def test_urls(url: str, opening: Opening) -> None:

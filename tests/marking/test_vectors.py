@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import pytest
-from dwellbench.errors import MarkingError
-from dwellbench.part import Part
 from hypothesis import given
 from hypothesis import strategies as st
+
+from dwellbench.errors import MarkingError
+from dwellbench.part import Part
 
 # marking: (farads, tolerance, volts, kind, test volts, dielectric, polar, sections)
 READ: dict[str, tuple[object, ...]] = {
@@ -27,7 +28,16 @@ READ: dict[str, tuple[object, ...]] = {
     "40+20+20 uF 450V": (None, None, 450, "dc", None, None, False, (40e-6, 20e-6, 20e-6)),
     "16/16 mfd 500V": (None, None, 500, "dc", None, None, False, (16e-6, 16e-6)),
     "2x50uF 450V": (None, None, 450, "dc", None, None, False, (50e-6, 50e-6)),
-    "\u25a0 40 \u25b2 20 \u25cf 20 uF 450V": (None, None, 450, "dc", None, None, False, (40e-6, 20e-6, 20e-6)),
+    "\u25a0 40 \u25b2 20 \u25cf 20 uF 450V": (
+        None,
+        None,
+        450,
+        "dc",
+        None,
+        None,
+        False,
+        (40e-6, 20e-6, 20e-6),
+    ),
     "40uF 450V + 20uF 25V electrolytic": (None, None, 450, "dc", None, "electrolytic", True, (40e-6, 20e-6)),
     "1000 mmfd": (1e-9, None, None, None, None, None, False, ()),
     "100 uuF 500 WV": (100e-12, None, 500, "dc", None, None, False, ()),
@@ -141,7 +151,29 @@ def test_any_text_is_read_or_refused_in_words(text: str) -> None:
 
 
 PIECES = st.sampled_from(
-    ["47", ".05", "0,1", "uF", "MFD", "n", "pF", "600", "V", "WVDC", "TEST", "WKG", "/", "+", "K", "473J", "2A", "film", "peak", "~", "%"]
+    [
+        "47",
+        ".05",
+        "0,1",
+        "uF",
+        "MFD",
+        "n",
+        "pF",
+        "600",
+        "V",
+        "WVDC",
+        "TEST",
+        "WKG",
+        "/",
+        "+",
+        "K",
+        "473J",
+        "2A",
+        "film",
+        "peak",
+        "~",
+        "%",
+    ]
 )
 
 
@@ -164,7 +196,10 @@ def test_any_heap_of_its_own_words_is_read_or_refused(pieces: list[str], between
 )
 def test_what_is_written_is_what_is_read(figures: int, power: int, volts: int, kind: str) -> None:
     farads = figures * 10.0 ** (power - 12)
-    for marking in (f"{figures}{power}K {volts}V {kind}" if power else f"{figures}pF {volts}V {kind}", f"{farads * 1e9:.6g}nF {kind} {volts} V"):
+    for marking in (
+        f"{figures}{power}K {volts}V {kind}" if power else f"{figures}pF {volts}V {kind}",
+        f"{farads * 1e9:.6g}nF {kind} {volts} V",
+    ):
         part = Part.parse(marking)
         assert part.capacitance_F == pytest.approx(farads)
         assert (part.rated_V, part.dielectric) == (volts, kind)
@@ -172,7 +207,15 @@ def test_what_is_written_is_what_is_read(figures: int, power: int, volts: int, k
 
 @pytest.mark.parametrize("volts", [450, 500, 630])
 @pytest.mark.parametrize("word", ["test", "TEST", "peak", "surge", "proof"])
-@pytest.mark.parametrize("form", ["0.1uF {word} {volts}V", "0.1uF {volts}V {word}", "0.1uF 250V {word} {volts}", "0.1 MFD 250 WVDC {volts} {word}"])
+@pytest.mark.parametrize(
+    "form",
+    [
+        "0.1uF {word} {volts}V",
+        "0.1uF {volts}V {word}",
+        "0.1uF 250V {word} {volts}",
+        "0.1 MFD 250 WVDC {volts} {word}",
+    ],
+)
 def test_a_test_voltage_is_never_the_rating(volts: int, word: str, form: str) -> None:
     part = Part.parse(form.format(volts=volts, word=word))
     assert part.rated_V in (None, 250)

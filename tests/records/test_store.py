@@ -10,14 +10,18 @@ from typing import Any
 
 import numpy as np
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
 from dwellbench.errors import StoreError, UsageError
 from dwellbench.records import RunWriter, Store
 from dwellbench.records.database import explained
 from dwellbench.records.packing import hash_of, pack, unpack
-from hypothesis import given
-from hypothesis import strategies as st
 
-ROWS = [[n, n * 100, 6, 1, 0, 18, 163_000 + n, 9000, 9100, 20, -50 + n, -10, 10, 0, 8000, 16000, 0, 0] for n in range(57)]
+ROWS = [
+    [n, n * 100, 6, 1, 0, 18, 163_000 + n, 9000, 9100, 20, -50 + n, -10, 10, 0, 8000, 16000, 0, 0]
+    for n in range(57)
+]
 
 
 def begin(store: Store, box: str = "0" * 16, **changes: Any) -> RunWriter:
@@ -55,7 +59,16 @@ def test_what_is_written_is_found(tmp_path: Path) -> None:
 
 
 @pytest.mark.parametrize(
-    "text", ["a/b\\c", "\U0001f600 emoji", "'; DROP TABLE run; --", '"quotes"', "\u05e9\u05dc\u05d5\u05dd", "x" * 10_000, "50%_off"]
+    "text",
+    [
+        "a/b\\c",
+        "\U0001f600 emoji",
+        "'; DROP TABLE run; --",
+        '"quotes"',
+        "\u05e9\u05dc\u05d5\u05dd",
+        "x" * 10_000,
+        "50%_off",
+    ],
 )
 def test_any_label_and_note_is_kept_and_found(tmp_path: Path, text: str) -> None:
     with Store(tmp_path / "r.db") as store:
@@ -113,7 +126,9 @@ with Store(sys.argv[1]) as store:
 def test_a_killed_writer_loses_no_batch_that_was_written(tmp_path: Path, after: int) -> None:
     database = tmp_path / "r.db"
     command = [sys.executable, "-c", _WRITER, str(database), "|".join(sys.path)]
-    with subprocess.Popen(command, stdout=subprocess.PIPE, text=True, cwd=Path(__file__).parents[2]) as process:
+    with subprocess.Popen(
+        command, stdout=subprocess.PIPE, text=True, cwd=Path(__file__).parents[2]
+    ) as process:
         assert process.stdout is not None
         said = 0
         for _ in range(after):
@@ -140,7 +155,12 @@ def test_files_that_are_none(tmp_path: Path) -> None:
     with sqlite3.connect(newer) as raw:
         raw.execute("PRAGMA user_version = 99")
     raw.close()
-    for path, words in ((tmp_path, "folder"), (foreign, "another program"), (text, "not a records file"), (newer, "newer dwellbench")):
+    for path, words in (
+        (tmp_path, "folder"),
+        (foreign, "another program"),
+        (text, "not a records file"),
+        (newer, "newer dwellbench"),
+    ):
         with pytest.raises(StoreError, match=words) as caught:
             Store(path)
         assert caught.value.exit == 8

@@ -6,10 +6,11 @@ import json
 import zlib
 
 import pytest
-from dwellbench.wire.core import Answer, Client, Junk, Notice, Refusal, seal, unseal
-from dwellbench.wire.schemas import WrongMessage
 from hypothesis import given
 from hypothesis import strategies as st
+
+from dwellbench.wire.core import Answer, Client, Junk, Notice, Refusal, seal, unseal
+from dwellbench.wire.schemas import WrongMessage
 
 STATE = {"n": 3, "boot": 1, "t": 10, "state": "rest", "stage": "idle", "why": ""}
 
@@ -35,7 +36,12 @@ def test_a_request_is_sealed_with_its_members_in_order() -> None:
 
 @pytest.mark.parametrize(
     ("method", "params"),
-    [("run", {}), ("run", {"run_key": "", "volts_mv": 1, "dwell_ms": 1}), ("samples", {"from": -1}), ("nonsense", {})],
+    [
+        ("run", {}),
+        ("run", {"run_key": "", "volts_mv": 1, "dwell_ms": 1}),
+        ("samples", {"from": -1}),
+        ("nonsense", {}),
+    ],
 )
 def test_a_request_that_its_schema_does_not_allow_is_not_sent(method: str, params: dict[str, object]) -> None:
     with pytest.raises(WrongMessage):

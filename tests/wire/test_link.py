@@ -8,6 +8,7 @@ from pathlib import Path
 
 import pytest
 import serial
+
 from dwellbench.errors import NoBoxError, UsageError
 from dwellbench.wire.link import open_link
 from dwellbench.wire.wire_log import WireLog, read_log
@@ -37,7 +38,9 @@ def test_a_port_without_permission_says_so(monkeypatch: pytest.MonkeyPatch) -> N
     """The error as pyserial raises it; a test that runs as root cannot provoke the real one."""
 
     def denied(*arguments: object, **options: object) -> None:
-        raise serial.SerialException(13, "could not open port /dev/ttyACM0: [Errno 13] Permission denied: '/dev/ttyACM0'")
+        raise serial.SerialException(
+            13, "could not open port /dev/ttyACM0: [Errno 13] Permission denied: '/dev/ttyACM0'"
+        )
 
     monkeypatch.setattr(serial, "serial_for_url", denied)
     with pytest.raises(NoBoxError, match="may not open") as caught:

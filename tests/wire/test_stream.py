@@ -5,6 +5,7 @@ from __future__ import annotations
 import random
 
 import pytest
+
 from dwellbench.wire.core import Notice
 from dwellbench.wire.stream import Stream
 

@@ -62,17 +62,46 @@ def global_options(command: F) -> F:
 
 
 _OPTIONS = (
-    click.option("--box", metavar="URL", help="Serial port, any pyserial URL, or emu://NAME. [env DWELLBENCH_BOX]"),
-    click.option("--records", type=click.Path(path_type=Path), metavar="FILE", help="Where records are kept. [env DWELLBENCH_RECORDS]"),
-    click.option("--json", "as_json", is_flag=True, default=None, help="One JSON document (or JSON Lines) on standard output."),
-    click.option("--wire-log", type=click.Path(path_type=Path), metavar="FILE", help="Log every line of the wire with its time."),
-    click.option("--config", type=click.Path(path_type=Path), metavar="FILE", help="Configuration file (TOML). [env DWELLBENCH_CONFIG]"),
+    click.option(
+        "--box", metavar="URL", help="Serial port, any pyserial URL, or emu://NAME. [env DWELLBENCH_BOX]"
+    ),
+    click.option(
+        "--records",
+        type=click.Path(path_type=Path),
+        metavar="FILE",
+        help="Where records are kept. [env DWELLBENCH_RECORDS]",
+    ),
+    click.option(
+        "--json",
+        "as_json",
+        is_flag=True,
+        default=None,
+        help="One JSON document (or JSON Lines) on standard output.",
+    ),
+    click.option(
+        "--wire-log",
+        type=click.Path(path_type=Path),
+        metavar="FILE",
+        help="Log every line of the wire with its time.",
+    ),
+    click.option(
+        "--config",
+        type=click.Path(path_type=Path),
+        metavar="FILE",
+        help="Configuration file (TOML). [env DWELLBENCH_CONFIG]",
+    ),
 )
 
 
 def take(options: Options, given: dict[str, Any]) -> None:
     """Take global options out of a command's parameters; later calls win."""
-    for name, key in (("box", "box"), ("records", "records"), ("json", "as_json"), ("wire_log", "wire_log"), ("config", "config")):
+    for name, key in (
+        ("box", "box"),
+        ("records", "records"),
+        ("json", "as_json"),
+        ("wire_log", "wire_log"),
+        ("config", "config"),
+    ):
         value = given.pop(key, None)
         if value is not None:
             setattr(options, name, value)
@@ -89,7 +118,10 @@ def configure(options: Options, environment: dict[str, str]) -> None:
     path = options.config or Path(platformdirs.user_config_path(APP)) / "config.toml"
     if not path.exists():
         if asked:
-            raise UsageError(f"There is no configuration file {path}.", remedy="Name one that exists, or leave --config out.")
+            raise UsageError(
+                f"There is no configuration file {path}.",
+                remedy="Name one that exists, or leave --config out.",
+            )
         return
     _take_file(options, path, _read(path))
 
@@ -98,7 +130,9 @@ def _read(path: Path) -> dict[str, Any]:
     try:
         return tomllib.loads(path.read_text(encoding="utf-8"))
     except (OSError, UnicodeDecodeError) as error:
-        raise UsageError(f"{path} cannot be read ({error}).", remedy="Correct the file or leave --config out.") from None
+        raise UsageError(
+            f"{path} cannot be read ({error}).", remedy="Correct the file or leave --config out."
+        ) from None
     except tomllib.TOMLDecodeError as error:
         raise UsageError(f"{path}: {error}.", remedy="Correct the TOML there.") from None
 
@@ -110,12 +144,17 @@ def _take_file(options: Options, path: Path, file: dict[str, Any]) -> None:
     for key, value in file.items():
         if key not in _KNOWN or not isinstance(value, _KNOWN[key]):
             known = ", ".join(sorted(_KNOWN))
-            raise UsageError(f"{path}: {key!r} is not a key of the configuration, or not of its kind.", remedy=f"Known are: {known}.")
+            raise UsageError(
+                f"{path}: {key!r} is not a key of the configuration, or not of its kind.",
+                remedy=f"Known are: {known}.",
+            )
     options.box = options.box or file.get("box")
     if options.records is None and "records" in file:
         options.records = Path(file["records"]).expanduser()
     options.places = {str(name): str(role) for name, role in file.get("places", {}).items()}
     wrong = set(file.get("thresholds", {})) - {"accept", "reject"}
     if wrong:
-        raise UsageError(f"{path}: [thresholds] has no {sorted(wrong)[0]!r}.", remedy="It has accept and reject.")
+        raise UsageError(
+            f"{path}: [thresholds] has no {sorted(wrong)[0]!r}.", remedy="It has accept and reject."
+        )
     options.thresholds = Thresholds(**file.get("thresholds", {}))

@@ -47,11 +47,16 @@ class Table(click.Group):
         command: click.Command = import_module(f"dwellbench.cli.commands.{COMMANDS[name]}").command
         return command
 
-    def resolve_command(self, ctx: click.Context, args: list[str]) -> tuple[str | None, click.Command | None, list[str]]:
+    def resolve_command(
+        self, ctx: click.Context, args: list[str]
+    ) -> tuple[str | None, click.Command | None, list[str]]:
         """Say what there is when a command is not known."""
         name = args[0] if args else ""
         if name not in COMMANDS and not name.startswith("-"):
-            raise UsageError(f"There is no command {name!r}.", remedy=f"There are: {', '.join(COMMANDS)}. See dwellbench --help.")
+            raise UsageError(
+                f"There is no command {name!r}.",
+                remedy=f"There are: {', '.join(COMMANDS)}. See dwellbench --help.",
+            )
         return super().resolve_command(ctx, args)
 
 
@@ -59,7 +64,7 @@ class Table(click.Group):
 @click.version_option(__version__, prog_name="dwellbench")
 @global_options
 @click.pass_context
-def cli(ctx: click.Context, **given: Any) -> None:
+def cli(ctx: click.Context, /, **given: Any) -> None:
     """May this capacitor go into a circuit at hundreds of volts?
 
     Try it without a box: dwellbench demo, or dwellbench --box emu://film test "47n 630V film" --role coupling --yes
@@ -95,7 +100,9 @@ def run(arguments: list[str]) -> int:
     except (click.Abort, KeyboardInterrupt):
         return _failed(options, StoppedError("Stopped by you; nothing was energised by this command."))
     except BrokenPipeError:
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())  # the reader has gone: nothing more to say
+        os.dup2(
+            os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno()
+        )  # the reader has gone: nothing more to say
         return 0
     except Exception as error:
         return _failed(options, _bug(error))
@@ -106,9 +113,14 @@ def _bug(error: Exception) -> BugError:
     import tempfile
     import traceback
 
-    with tempfile.NamedTemporaryFile("w", prefix="dwellbench-", suffix=".txt", delete=False, encoding="utf-8") as file:
+    with tempfile.NamedTemporaryFile(
+        "w", prefix="dwellbench-", suffix=".txt", delete=False, encoding="utf-8"
+    ) as file:
         file.write(traceback.format_exc())
-    return BugError(f"dwellbench met a defect of its own ({type(error).__name__}: {error}).", remedy=f"Please report it with {file.name}.")
+    return BugError(
+        f"dwellbench met a defect of its own ({type(error).__name__}: {error}).",
+        remedy=f"Please report it with {file.name}.",
+    )
 
 
 def _failed(options: Options, error: DwellbenchError) -> int:

@@ -25,7 +25,10 @@ def ask_ready(options: Options, what: str, *, yes: bool) -> None:
     if yes:
         return
     if not interactive():
-        raise UsageError("There is no terminal to answer on.", remedy="Give --yes when the part is in and the lid is closed.")
+        raise UsageError(
+            "There is no terminal to answer on.",
+            remedy="Give --yes when the part is in and the lid is closed.",
+        )
     for line in CAUTIONS:
         options.say(line)
     click.prompt(f"{what} Then press Enter", default="", show_default=False, err=options.json)

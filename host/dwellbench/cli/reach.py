@@ -26,7 +26,9 @@ def _only_port() -> str:
     if not found:
         raise NoBoxError("No box is connected.", remedy=_HINT)
     if len(found) > 1:
-        raise NoBoxError(f"There are several ports: {', '.join(found)}.", remedy="Say which is the box's with --box.")
+        raise NoBoxError(
+            f"There are several ports: {', '.join(found)}.", remedy="Say which is the box's with --box."
+        )
     return found[0]
 
 
@@ -34,5 +36,7 @@ def open_store(options: Options) -> Store:
     """Open the records, and say which runs an earlier program left behind."""
     store = Store(options.records_path)
     for left in store.unfinished():
-        options.say(f"{left.name} ({left.marking}) was interrupted: its program ended before the run did. What it had measured is kept.")
+        options.say(
+            f"{left.name} ({left.marking}) was interrupted: its program ended before the run did. What it had measured is kept."
+        )
     return store

@@ -64,10 +64,19 @@ _SHOWN = (
 def lines(outcome: Outcome) -> list[str]:
     """The outcome in lines of text."""
     following = next_words(outcome)
-    told = ["", f"    {word(outcome)}" + (f"  -  {following}" if following else ""), "", f"{outcome.verdict}: {outcome.reason}"]
+    told = [
+        "",
+        f"    {word(outcome)}" + (f"  -  {following}" if following else ""),
+        "",
+        f"{outcome.verdict}: {outcome.reason}",
+    ]
     if outcome.test_V is not None:
         told.append(f"Tested at {outcome.test_V:.0f} V for {outcome.dwell_s or 0:.0f} s.")
-    told += [f"  {name:<14} {quantity(getattr(outcome, key), unit)}" for name, key, unit in _SHOWN if getattr(outcome, key) is not None]
+    told += [
+        f"  {name:<14} {quantity(getattr(outcome, key), unit)}"
+        for name, key, unit in _SHOWN
+        if getattr(outcome, key) is not None
+    ]
     told += [f"  found: {finding.id.replace('_', ' ')}. {finding.evidence}" for finding in outcome.findings]
     if outcome.limits:
         ruling = outcome.limits[0]

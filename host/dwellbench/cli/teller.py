@@ -54,7 +54,11 @@ class Teller:
             if row[_NV]:
                 self.volts = row[_SV] / row[_NV] * _VOLTS_A_CODE[row[_VRANGE]]
         elif notice.method == "state":
-            self.state, self.stage, self._t_ms = notice.params["state"], notice.params["stage"], notice.params["t"]
+            self.state, self.stage, self._t_ms = (
+                notice.params["state"],
+                notice.params["stage"],
+                notice.params["t"],
+            )
             self._proven = self.state == "rest" or notice.params["why"] == "discharge proven"
         changed = before != (self.stage, self.state)
         if changed:
@@ -65,7 +69,9 @@ class Teller:
         """How things stand now."""
         doing, following = _SENTENCES.get(self.stage, ("", ""))
         target = f"{self._plan.volts_V:.0f} V"
-        return Told(self._on_part(), doing.format(target=target), self._left(), following.format(target=target))
+        return Told(
+            self._on_part(), doing.format(target=target), self._left(), following.format(target=target)
+        )
 
     def _on_part(self) -> str:
         if self._proven:

@@ -35,7 +35,9 @@ class View:
             self._live.__enter__()
         return self
 
-    def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None) -> None:
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
         if self._live is not None:
             self._live.__exit__(kind, error, trace)
             self._live = None

@@ -7,16 +7,16 @@ from typing import Any
 
 from dwellbench import assets
 from dwellbench.emulator.emulated_box import EmulatedBox
+from dwellbench.emulator.link_fifo import LinkFifo
+from dwellbench.emulator.loader import Firmware
+from dwellbench.emulator.reference import bits
 from dwellbench.emulator.world import NO_CONVERSION
 
-assets.use_firmware()
-
-from dwellbox.board import Board  # noqa: E402
-from dwellbox.controller import Controller  # noqa: E402
+_STOP = bits("inputs")["stop"]
 
 
-class SimulatedBoard(Board):  # type: ignore[misc]
-    """The seam's methods over an emulated box. Names and meanings are the firmware's."""
+class SimulatedBoard:
+    """The seam's methods over an emulated box. Names and meanings are the firmware's (`dwellbox/board.py`)."""
 
     def __init__(self, box: EmulatedBox) -> None:
         self._box = box
@@ -26,12 +26,14 @@ class SimulatedBoard(Board):  # type: ignore[misc]
         self.conversions = [NO_CONVERSION, NO_CONVERSION]
         self.emulation: dict[str, Any] = box.emulation()
         # straight to where the bytes are: these are the calls of every period
-        self.get = box.link.get
-        self.room = box.link.room
-        self.put = box.link.put
+        link: LinkFifo = box.link
+        self.get = link.get
+        self.room = link.room
+        self.put = link.put
         self.now_ms = box.world.clock_ms
 
     def wait_period(self) -> None:
+        """Advance the world by one period."""
         box = self._box
         zero, one = self.conversions
         self._world.period(box.outputs, box.supply_mv, self.pumps, self.feeds, zero, one)
@@ -77,18 +79,31 @@ class SimulatedBoard(Board):  # type: ignore[misc]
     def unique_id(self) -> str:
         return self._world.unique_id
 
+    def build(self) -> str:
+        """The firmware's hash, which a loader leaves on a board."""
+        return assets.build_hash()
+
+    def wants_plain(self) -> bool:
+        """`to_plain` acts at once, so no later start has to be asked."""
+        return False
+
     def restart_plain(self) -> None:
         self._box.to_plain()
 
 
 class InProcessBox(EmulatedBox):
-    """The firmware's own files in CPython."""
+    """The firmware's own files in CPython. What main.py does at boot is done here; a test holds the two together."""
 
     def start(self) -> None:
         """Build the controller anew, as after a reset: RAM is gone."""
-        reference = json.loads((assets.device() / "reference_box.json").read_text(encoding="utf-8"))
         self.board = SimulatedBoard(self)
-        self.controller = Controller(self.board, reference, assets.build_hash())
+        if self.board.inputs() & _STOP:
+            self.to_plain()
+            return
+        firmware = Firmware(assets.device())
+        reference = json.loads((assets.device() / "reference_box.json").read_text(encoding="utf-8"))
+        controller = firmware.module("dwellbox.controller").Controller
+        self.controller = controller(self.board, reference, self.board.build())
         self._step = self.controller.step
         self._wait = self.board.wait_period
 

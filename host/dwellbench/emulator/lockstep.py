@@ -129,7 +129,9 @@ class LockstepBox(EmulatedBox):
         data = self._from.read(length)
         answer = b""
         if kind == b"H":
-            about = f"{self.cause} {self.world.unique_id} {assets.build_hash()} {self.emulation()['time_scale']}"
+            about = (
+                f"{self.cause} {self.world.unique_id} {assets.build_hash()} {self.emulation()['time_scale']}"
+            )
             answer = about.encode()
         elif kind == b"K":
             self.keep(name, data)

@@ -1,30 +1,30 @@
-"""Which emulated box an `emu://` URL or the `emulate` command means, and the file that keeps it between commands.
+"""Which emulated box an `emu://` URL or the `emulate` command means.
 
     emu://film?seed=7                        a packaged scenario
     emu:///path/to/file.toml?seed=7          a file (three slashes)
-    emu://film?state=box.json                the box lives on in that file: flash, latched reasons, operator, time
+    emu://film?state=box.json                the box lives on in that file (state.py)
     emu://film?interpreter=micropython       the firmware under MicroPython
 """
 
 from __future__ import annotations
 
-import json
-import os
 import urllib.parse
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from pathlib import Path
 
 from dwellbench.emulator.emulated_box import EmulatedBox
 from dwellbench.emulator.in_process import InProcessBox
 from dwellbench.emulator.lockstep import LockstepBox
 from dwellbench.emulator.scenario import Scenario
+from dwellbench.emulator.state import StateFile, live_on
 from dwellbench.errors import UsageError
 
 INTERPRETERS: dict[str, type[EmulatedBox]] = {"cpython": InProcessBox, "micropython": LockstepBox}
 _KEYS = {"seed", "state", "interpreter"}
+_MOST_SEED = 2**63 - 1
 
 
-@dataclass(frozen=True)
+@dataclass
 class Opening:
     """What was asked for. `seed` None takes the scenario's."""
 
@@ -32,61 +32,75 @@ class Opening:
     seed: int | None = None
     state: Path | None = None
     interpreter: str = "cpython"
+    _file: StateFile | None = field(default=None, repr=False, compare=False)
 
     @classmethod
     def from_url(cls, url: str) -> Opening:
         """Read an emu:// URL. UsageError says what is wrong with it."""
         parts = urllib.parse.urlsplit(url)
-        query = urllib.parse.parse_qs(parts.query, keep_blank_values=True)
-        unknown = sorted(set(query) - _KEYS)
-        if parts.scheme != "emu" or unknown:
-            what = f"the key {unknown[0]!r}" if unknown else "the scheme"
-            raise UsageError(f"{url}: {what} is not known.", remedy="Say emu://NAME?seed=N or emu:///path/file.toml.")
-        name = urllib.parse.unquote(parts.netloc or parts.path)
-        if parts.netloc and parts.path not in ("", "/"):
-            name = urllib.parse.unquote(parts.netloc + parts.path)
-        state = query.get("state", [None])[0]
+        if parts.scheme != "emu":
+            raise UsageError(f"{url} is not an emu:// URL.", remedy=_SAY)
+        query = _query(url, parts.query)
+        name = urllib.parse.unquote(parts.netloc + (parts.path if parts.path != "/" else ""))
+        state = query.get("state")
+        if state == "":
+            raise UsageError(f"{url}: the state needs a file.", remedy="Say state=box.json.")
         return cls(
             name or "film",
-            _whole(url, query.get("seed", [None])[0]),
+            _seed(url, query.get("seed")),
             None if state is None else Path(state),
-            query.get("interpreter", ["cpython"])[0],
+            query.get("interpreter", "cpython"),
         )
 
     def make(self, time_scale: float | None = None) -> EmulatedBox:
-        """Switch the box on, where it was left if it has a state file."""
+        """Switch the box on, as it was left if it has a state file. UsageError, NoBoxError when that cannot be."""
         if self.interpreter not in INTERPRETERS:
             known = " or ".join(sorted(INTERPRETERS))
             raise UsageError(f"There is no interpreter {self.interpreter!r}.", remedy=f"Say {known}.")
         scenario = Scenario.load(self.scenario)
         box = INTERPRETERS[self.interpreter](scenario, self.seed, time_scale=time_scale)
-        if self.state is not None and self.state.exists():
-            _restore(box, self.state)
+        if self.state is not None:
+            self._take_up(box, StateFile(self.state))
         return box
 
+    def _take_up(self, box: EmulatedBox, file: StateFile) -> None:
+        try:
+            file.load(box)
+        except BaseException:
+            file.release()
+            raise
+        self._file = file
+        box.on_keep = lambda: file.save(box)
+
     def leave(self, box: EmulatedBox) -> None:
-        """Keep the box in its state file, if it has one: written whole, then renamed over the old one."""
-        if self.state is None:
+        """The host is gone. A box with a state file lives on until it is at rest, and is kept there."""
+        file, self._file = self._file, None
+        if file is None:
             return
-        new = self.state.with_name(self.state.name + ".new")
-        new.write_text(json.dumps(box.snapshot()), encoding="utf-8")
-        os.replace(new, self.state)
+        try:
+            live_on(box)
+            file.save(box)
+        finally:
+            box.on_keep = None
+            file.release()
 
 
-def _whole(url: str, text: str | None) -> int | None:
+_SAY = "Say emu://NAME?seed=N or emu:///path/file.toml."
+
+
+def _query(url: str, text: str) -> dict[str, str]:
+    query = urllib.parse.parse_qs(text, keep_blank_values=True)
+    for key, values in query.items():
+        if key not in _KEYS:
+            raise UsageError(f"{url}: the key {key!r} is not known.", remedy=f"Known are: {', '.join(sorted(_KEYS))}.")
+        if len(values) > 1:
+            raise UsageError(f"{url}: {key} is said twice.", remedy="Say it once.")
+    return {key: values[0] for key, values in query.items()}
+
+
+def _seed(url: str, text: str | None) -> int | None:
     if text is None:
         return None
-    try:
+    if text.isascii() and text.isdigit() and int(text) <= _MOST_SEED:
         return int(text)
-    except ValueError:
-        raise UsageError(f"{url}: the seed must be a whole number, not {text!r}.", remedy="Say seed=7.") from None
-
-
-def _restore(box: EmulatedBox, path: Path) -> None:
-    try:
-        box.restore(json.loads(path.read_text(encoding="utf-8")))
-    except (OSError, ValueError, KeyError, TypeError) as error:
-        raise UsageError(
-            f"{path} does not keep this emulated box ({error}).",
-            remedy="Name the state file of the same scenario and seed, or a new file.",
-        ) from None
+    raise UsageError(f"{url}: the seed must be a whole number from 0 to {_MOST_SEED}, not {text!r}.", remedy="Say seed=7.")

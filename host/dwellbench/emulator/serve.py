@@ -47,7 +47,10 @@ class Pty:
         if link.is_symlink() and not link.exists():
             link.unlink()  # left behind by a process that was killed
         if link.exists() or link.is_symlink():
-            raise UsageError(f"{link} exists already.", remedy="Choose another name, or remove it if no emulator serves it.")
+            raise UsageError(
+                f"{link} exists already.",
+                remedy="Choose another name, or remove it if no emulator serves it.",
+            )
         self._master, self._slave = os.openpty()  # the slave stays open, so that a host may come and go
         tty.setraw(self._slave)
         os.set_blocking(self._master, False)
@@ -57,7 +60,9 @@ class Pty:
         try:
             link.symlink_to(self.name)
         except OSError as error:
-            raise UsageError(f"{link} cannot be made: {error.strerror}.", remedy="Choose a folder you may write to.") from None
+            raise UsageError(
+                f"{link} cannot be made: {error.strerror}.", remedy="Choose a folder you may write to."
+            ) from None
 
     def exchange(self, box: EmulatedBox, wait_s: float) -> None:
         """Nobody knows whether a host has the slave open, so one is taken to be there."""
@@ -90,9 +95,12 @@ class Tcp:
         except OSError as error:
             busy = error.errno == errno.EADDRINUSE
             why = "is in use by another program" if busy else f"cannot be opened: {error.strerror or error}"
-            raise UsageError(f"{host}:{port} {why}.", remedy="Choose another port; 0 takes a free one.") from None
+            raise UsageError(
+                f"{host}:{port} {why}.", remedy="Choose another port; 0 takes a free one."
+            ) from None
         self._listener.setblocking(False)
-        self.name = "socket://%s:%d" % self._listener.getsockname()[:2]
+        address = self._listener.getsockname()
+        self.name = f"socket://{address[0]}:{address[1]}"
         self._client: socket.socket | None = None
         self._held = b""
 

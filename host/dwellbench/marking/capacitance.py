@@ -43,10 +43,15 @@ UNITS = {
 }
 _UNIT = "|".join(sorted((re.escape(unit) for unit in UNITS), key=len, reverse=True))
 
-VALUE = re.compile(rf"(?P<number>{NUMBER}) ?(?P<unit>{_UNIT})(?P<letter>[FGHJKMZ])?(?![a-z0-9\u00b5])", re.IGNORECASE)
+VALUE = re.compile(
+    rf"(?P<number>{NUMBER}) ?(?P<unit>{_UNIT})(?P<letter>[FGHJKMZ])?(?![a-z0-9\u00b5])", re.IGNORECASE
+)
 """A number with its unit, perhaps with a tolerance letter behind it (47nJ)."""
 
-LETTER = re.compile(r"(?P<whole>\d{0,3})(?P<unit>[pnuR\u00b5m])(?P<part>\d{1,2})(?P<letter>[BCDFGHJKMZ])?(?![A-Za-z0-9])", re.IGNORECASE)
+LETTER = re.compile(
+    r"(?P<whole>\d{0,3})(?P<unit>[pnuR\u00b5m])(?P<part>\d{1,2})(?P<letter>[BCDFGHJKMZ])?(?![A-Za-z0-9])",
+    re.IGNORECASE,
+)
 """IEC 60062: the unit's letter stands where the decimal point would (4n7, 2p2, R47)."""
 
 CODE = re.compile(

@@ -90,7 +90,9 @@ def _take_farads(reading: Reading, text: str, farads: float, letter: str | None,
             readings=[],
         )
     if farads <= 0:
-        raise MarkingError(f"{text!r} in {reading.text!r} is no capacitance.", remedy="Type it with its unit.", readings=[])
+        raise MarkingError(
+            f"{text!r} in {reading.text!r} is no capacitance.", remedy="Type it with its unit.", readings=[]
+        )
     reading.farads = farads
     reading.understood.append(f"{text}: {said(farads)}.")
     if remark:
@@ -105,7 +107,9 @@ def _take_sections(reading: Reading, text: str, values: list[float], remark: str
     if any(value <= 0 for value in values):
         raise MarkingError(f"{text!r} is no capacitance.", remedy="Type each section's value.", readings=[])
     reading.sections = values
-    reading.understood.append(f"{text}: {len(values)} sections, {' and '.join(said(value) for value in values)}.")
+    reading.understood.append(
+        f"{text}: {len(values)} sections, {' and '.join(said(value) for value in values)}."
+    )
     if remark:
         reading.understood.append(remark)
 
@@ -122,7 +126,9 @@ def _take_word(reading: Reading, token: t.Token) -> None:
     kind = token.value
     if kind.dielectric:
         if reading.dielectric not in (None, "film", kind.dielectric) and kind.dielectric != "film":
-            reading.doubts.append(f"Both {reading.dielectric} and {kind.dielectric} are named; {kind.dielectric} is taken.")
+            reading.doubts.append(
+                f"Both {reading.dielectric} and {kind.dielectric} are named; {kind.dielectric} is taken."
+            )
         if reading.dielectric is None or kind.dielectric != "film":
             reading.dielectric = kind.dielectric
     if kind.polar is not None and reading.polar is not False:
@@ -138,7 +144,7 @@ def _implied(kind: object) -> str:
     dielectric = getattr(kind, "dielectric", None)
     polar = getattr(kind, "polar", None)
     if dielectric:
-        return dielectric.replace("_", " class ")
+        return str(dielectric).replace("_", " class ")
     return "not polar" if polar is False else "a safety class"
 
 
@@ -154,7 +160,9 @@ def _take_number(reading: Reading, token: t.Token) -> None:
 
 def _take_volts(reading: Reading, text: str, first: float, second: float | None, kind: str | None) -> None:
     if first <= 0 or (second is not None and second <= 0):
-        raise MarkingError(f"{text!r} in {reading.text!r} is no voltage.", remedy="Type the working voltage.", readings=[])
+        raise MarkingError(
+            f"{text!r} in {reading.text!r} is no voltage.", remedy="Type the working voltage.", readings=[]
+        )
     if second is not None:
         _take_pair(reading, text, first, second, kind)
     elif kind == voltage.AC:
@@ -174,8 +182,12 @@ def _take_pair(reading: Reading, text: str, first: float, second: float, kind: s
     """250/750 V: a rating and its test voltage."""
     low, high = min(first, second), max(first, second)
     if kind == voltage.AC or low == high:
-        readings = [f"{_head(reading)} {low:g} VAC"] if kind == voltage.AC else [f"{_head(reading)} {low:g} V"]
-        raise MarkingError(f"{text!r} can mean more than one thing.", remedy="Type the rating alone.", readings=readings)
+        readings = (
+            [f"{_head(reading)} {low:g} VAC"] if kind == voltage.AC else [f"{_head(reading)} {low:g} V"]
+        )
+        raise MarkingError(
+            f"{text!r} can mean more than one thing.", remedy="Type the rating alone.", readings=readings
+        )
     reading.rated_V = low
     reading.test_V = max(high, reading.test_V or 0.0)
     reading.understood.append(f"{text}: rated {low:g} V DC, tested at {high:g} V by its maker.")
@@ -295,7 +307,11 @@ def _refuse_code(text: str, codes: list[t.Token], found: list[t.Token]) -> None:
 
 
 def _rest(found: list[t.Token], without: t.Token | None) -> str:
-    volts = [token for token in found if token.what == t.VOLTS and token.value[1] is None and token.value[2] is None]
+    volts = [
+        token
+        for token in found
+        if token.what == t.VOLTS and token.value[1] is None and token.value[2] is None
+    ]
     return f" {volts[0].value[0]:g} V" if volts else ""
 
 
@@ -316,7 +332,10 @@ def _bare_readings(numbers: list[float], found: list[t.Token]) -> list[str]:
             readings.append(f"{plain(first)}+{plain(last)} uF")
         return readings
     joined = "+".join(plain(value) for value in (first, *middle))
-    return [f"{joined} uF {last:g} V", f"{plain(first)} uF {min(middle[-1], last):g} V TEST {max(middle[-1], last):g} V"]
+    return [
+        f"{joined} uF {last:g} V",
+        f"{plain(first)} uF {min(middle[-1], last):g} V TEST {max(middle[-1], last):g} V",
+    ]
 
 
 def _percent(value: tuple[float, float]) -> str:

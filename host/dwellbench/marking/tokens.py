@@ -25,24 +25,33 @@ class Token:
     value: Any = None
 
 
-_SECTION_UNIT = "|".join(sorted((re.escape(u) for u in cap.UNITS if u not in ("f", "n", "p")), key=len, reverse=True))
+_SECTION_UNIT = "|".join(
+    sorted((re.escape(u) for u in cap.UNITS if u not in ("f", "n", "p")), key=len, reverse=True)
+)
 _SECTIONS = re.compile(
-    rf"(?P<values>{NUMBER}(?: ?[+/x&-] ?{NUMBER})+) ?x? ?(?P<unit>{_SECTION_UNIT})(?![A-Za-z0-9])", re.IGNORECASE
+    rf"(?P<values>{NUMBER}(?: ?[+/x&-] ?{NUMBER})+) ?x? ?(?P<unit>{_SECTION_UNIT})(?![A-Za-z0-9])",
+    re.IGNORECASE,
 )
 _VOLT_CODE = re.compile(r"(?P<code>[0-3][A-Z])(?=\d{3}[A-Z]?(?![A-Za-z0-9])|(?![A-Za-z0-9]))")
 _SIGN = r"(?:[\u25a0\u25a1\u25aa\u25b2\u25b3\u25cf\u25cb\u25d0-\u25d7]|(?:square|triangle|half[ -]?moon|circle)\b)"
 _SYMBOL = re.compile(_SIGN, re.IGNORECASE)
 _SYMBOLED = re.compile(
-    rf"(?P<values>{_SIGN} ?{NUMBER}(?: ?[,;+]? ?{_SIGN} ?{NUMBER})+) ?(?P<unit>{_SECTION_UNIT})(?![A-Za-z0-9])", re.IGNORECASE
+    rf"(?P<values>{_SIGN} ?{NUMBER}(?: ?[,;+]? ?{_SIGN} ?{NUMBER})+) ?(?P<unit>{_SECTION_UNIT})(?![A-Za-z0-9])",
+    re.IGNORECASE,
 )
-_TIMES = re.compile(rf"(?P<times>[2-4]) ?x ?(?P<number>{NUMBER}) ?(?P<unit>{_SECTION_UNIT})(?![A-Za-z0-9])", re.IGNORECASE)
+_TIMES = re.compile(
+    rf"(?P<times>[2-4]) ?x ?(?P<number>{NUMBER}) ?(?P<unit>{_SECTION_UNIT})(?![A-Za-z0-9])", re.IGNORECASE
+)
 _LEAST_PAIR_V = 3.0  # nothing is rated below
 _MOST_RATIO = 6.0  # a test voltage is two to four times the rating, never ten times
 _LETTER = re.compile(r"(?P<letter>[BCDFGHJKMNZ])(?![A-Za-z0-9.])")
 _NUMBER = re.compile(rf"(?P<number>{NUMBER})(?![A-Za-z0-9])")
 _KILO = re.compile(r"(?P<number>\d{1,2}) ?[kK](?![A-Za-z0-9])")
 _NUMBER_FOLLOWS = re.compile(rf"[ :=]*{NUMBER}")
-_FILLER = re.compile(r"(?:capacitor|cap|condenser|kondensator|kapazit\u00e4t|axial|radial|tubular|moulded|molded|can|nos|type)\b\.?", re.I)
+_FILLER = re.compile(
+    r"(?:capacitor|cap|condenser|kondensator|kapazit\u00e4t|axial|radial|tubular|moulded|molded|can|nos|type)\b\.?",
+    re.I,
+)
 _ANY = re.compile(r"[^\s,;/()]+|[/,;()]")
 
 
@@ -123,7 +132,9 @@ def _volts(match: re.Match[str], before: list[Token]) -> Token | tuple[Token, in
     thousand = 1000.0 if (match["unit"] or "").lower().startswith("k") else 1.0
     first = number(match["first"]) * thousand
     second = number(match["second"]) * thousand if match["second"] else None
-    if second is not None and (first < _LEAST_PAIR_V or max(first, second) > _MOST_RATIO * min(first, second)):
+    if second is not None and (
+        first < _LEAST_PAIR_V or max(first, second) > _MOST_RATIO * min(first, second)
+    ):
         end = match.end("first")  # .1/400V: the first is no voltage
         return Token(NUMBER_ONLY, match["first"], number(match["first"])), end
     word = match["kind"] or match["bare"]

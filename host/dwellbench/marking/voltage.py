@@ -49,7 +49,11 @@ CODES = {
 _RATED = "wvdc|vdcw|dcwv|wkvdc|vdc|vwkg|wdc|wkg|working|work|wv|vw|rated|dc|arb|betrieb"
 _TEST = "test|tst|tested|proof|peak|surge|spitze|tv|pr\u00fcf|pk"
 _AC = "vac|ac"
-_KINDS = {**dict.fromkeys(_RATED.split("|"), RATED), **dict.fromkeys(_TEST.split("|"), TEST), **dict.fromkeys(_AC.split("|"), AC)}
+_KINDS = {
+    **dict.fromkeys(_RATED.split("|"), RATED),
+    **dict.fromkeys(_TEST.split("|"), TEST),
+    **dict.fromkeys(_AC.split("|"), AC),
+}
 
 WORD = re.compile(rf"(?P<word>{_RATED}|{_TEST}|{_AC})\b\.?:?", re.IGNORECASE)
 

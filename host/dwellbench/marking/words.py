@@ -23,10 +23,14 @@ _SAME = {
 
 def uniform(text: str) -> str:
     """Return the text with compatible letters folded (full-width digits and the like), spaces single, ends trimmed."""
-    folded = "".join(letter if letter == "\u00b5" else unicodedata.normalize("NFKC", letter) for letter in text)
+    folded = "".join(
+        letter if letter == "\u00b5" else unicodedata.normalize("NFKC", letter) for letter in text
+    )
     for old, new in _SAME.items():
         folded = folded.replace(old, new)
-    folded = re.sub(r"(?<![A-Za-z])(?:[A-Za-z]\.){2,}", lambda dotted: dotted.group().replace(".", ""), folded)  # V.W. -> VW
+    folded = re.sub(
+        r"(?<![A-Za-z])(?:[A-Za-z]\.){2,}", lambda dotted: dotted.group().replace(".", ""), folded
+    )  # V.W. -> VW
     return re.sub(r"\s+", " ", folded).strip()
 
 

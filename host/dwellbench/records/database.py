@@ -28,7 +28,9 @@ def open_database(path: Path) -> sqlite3.Connection:
     try:
         path.parent.mkdir(parents=True, exist_ok=True)
     except OSError as error:
-        raise StoreError(f"The folder {path.parent} cannot be made: {error.strerror}.", remedy="Name another file.") from None
+        raise StoreError(
+            f"The folder {path.parent} cannot be made: {error.strerror}.", remedy="Name another file."
+        ) from None
     with explained(path):
         connection = sqlite3.connect(path, timeout=WAIT_S, isolation_level=None)
         connection.row_factory = sqlite3.Row
@@ -56,16 +58,44 @@ def _explain(path: Path, error: sqlite3.Error) -> StoreError:
     for words, sentence, remedy in _SAY:
         if words in text:
             return StoreError(sentence.format(path=path), remedy=remedy, sqlite=text)
-    return StoreError(f"The records in {path} cannot be used ({text}).", remedy="Name another file, or restore a copy.", sqlite=text)
+    return StoreError(
+        f"The records in {path} cannot be used ({text}).",
+        remedy="Name another file, or restore a copy.",
+        sqlite=text,
+    )
 
 
 _SAY = (
-    ("not a database", "{path} is not a records file.", "Name the right file, or one that does not exist yet."),
-    ("readonly", "{path} cannot be written.", "Give yourself the right to write there, or name another file with --records."),
-    ("unable to open", "{path} cannot be opened.", "Check folder and rights, or name another file with --records."),
-    ("disk is full", "The disk is full; {path} cannot grow.", "Make room. Everything written before is kept."),
-    ("locked", "{path} is being written by another program.", "Wait until it is done, or name another file with --records."),
-    ("malformed", "{path} is damaged.", "Copy the file before anything else; then restore the newest backup."),
+    (
+        "not a database",
+        "{path} is not a records file.",
+        "Name the right file, or one that does not exist yet.",
+    ),
+    (
+        "readonly",
+        "{path} cannot be written.",
+        "Give yourself the right to write there, or name another file with --records.",
+    ),
+    (
+        "unable to open",
+        "{path} cannot be opened.",
+        "Check folder and rights, or name another file with --records.",
+    ),
+    (
+        "disk is full",
+        "The disk is full; {path} cannot grow.",
+        "Make room. Everything written before is kept.",
+    ),
+    (
+        "locked",
+        "{path} is being written by another program.",
+        "Wait until it is done, or name another file with --records.",
+    ),
+    (
+        "malformed",
+        "{path} is damaged.",
+        "Copy the file before anything else; then restore the newest backup.",
+    ),
 )
 
 

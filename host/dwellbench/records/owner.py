@@ -43,7 +43,9 @@ class BoxLock:
         try:
             file = open(self._path, "a+b")  # noqa: SIM115  (kept open: closing it lets the lock go)
         except OSError as error:
-            raise StoreError(f"{self._path} cannot be made: {error.strerror}.", remedy="Name another file with --records.") from None
+            raise StoreError(
+                f"{self._path} cannot be made: {error.strerror}.", remedy="Name another file with --records."
+            ) from None
         if not _lock(file):
             file.close()
             return False

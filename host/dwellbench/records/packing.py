@@ -23,7 +23,9 @@ def pack(rows: Sequence[Sequence[int]] | NDArray[np.int64]) -> bytes:
     table = np.asarray(rows, dtype=np.int64).reshape(len(rows), COLUMNS)
     if table.size and np.abs(table).max() >= 2**30:
         raise ValueError("a sample row has a number beyond 30 bits")
-    differences = np.diff(table, axis=0, prepend=np.zeros((1, COLUMNS), dtype=np.int64)) if table.size else table
+    differences = (
+        np.diff(table, axis=0, prepend=np.zeros((1, COLUMNS), dtype=np.int64)) if table.size else table
+    )
     return _HEAD.pack(_MAGIC, len(table)) + zlib.compress(differences.T.astype("<i4").tobytes(), 6)
 
 

@@ -45,7 +45,10 @@ def number_of(name: str | int) -> int:
     """Return the number of a record's name. UsageError if it is none."""
     match = re.fullmatch(r"[Rr]?0*([0-9]{1,12})", str(name).strip())
     if not match:
-        raise UsageError(f"{name!r} is no record's name.", remedy="Records are named like R17; list them with: dwellbench records list.")
+        raise UsageError(
+            f"{name!r} is no record's name.",
+            remedy="Records are named like R17; list them with: dwellbench records list.",
+        )
     return int(match[1])
 
 
@@ -59,14 +62,18 @@ def find(connection: sqlite3.Connection, where: dict[str, Any], limit: int, offs
     """Return summaries, newest first. `where` has text, verdict, label, since, until, box, simulated; None is any."""
     clauses, values = _conditions(where)
     sql = _SUMMARY + (" WHERE " + " AND ".join(clauses) if clauses else "")
-    rows = connection.execute(sql + " ORDER BY run.id DESC LIMIT ? OFFSET ?", (*values, limit, offset)).fetchall()
+    rows = connection.execute(
+        sql + " ORDER BY run.id DESC LIMIT ? OFFSET ?", (*values, limit, offset)
+    ).fetchall()
     return [Summary(**{**dict(row), "simulated": bool(row["simulated"])}) for row in rows]
 
 
 def count(connection: sqlite3.Connection, where: dict[str, Any]) -> int:
     """How many records match."""
     clauses, values = _conditions(where)
-    sql = "SELECT count(*) FROM run JOIN box ON box.id = run.box" + (" WHERE " + " AND ".join(clauses) if clauses else "")
+    sql = "SELECT count(*) FROM run JOIN box ON box.id = run.box" + (
+        " WHERE " + " AND ".join(clauses) if clauses else ""
+    )
     return int(connection.execute(sql, values).fetchone()[0])
 
 
@@ -95,9 +102,24 @@ def _conditions(where: dict[str, Any]) -> tuple[list[str], list[Any]]:
     return clauses, values
 
 
-_PLAIN = (
-    "run_key firmware build label note marking role grade started_utc ended_utc state end fault why verdict sample_count"
-).split()
+_PLAIN = [
+    "run_key",
+    "firmware",
+    "build",
+    "label",
+    "note",
+    "marking",
+    "role",
+    "grade",
+    "started_utc",
+    "ended_utc",
+    "state",
+    "end",
+    "fault",
+    "why",
+    "verdict",
+    "sample_count",
+]
 
 
 def show(connection: sqlite3.Connection, name: str | int) -> dict[str, Any]:
@@ -118,11 +140,15 @@ def show(connection: sqlite3.Connection, name: str | int) -> dict[str, Any]:
     record["calibration"] = None if document is None else json.loads(document)
     record["events"] = [
         {"kind": event["kind"], **json.loads(event["document"])}
-        for event in connection.execute("SELECT kind, document FROM event WHERE run = ? ORDER BY number", (number,))
+        for event in connection.execute(
+            "SELECT kind, document FROM event WHERE run = ? ORDER BY number", (number,)
+        )
     ]
     record["outcomes"] = [
         {"made_utc": outcome["made_utc"], **json.loads(outcome["document"])}
-        for outcome in connection.execute("SELECT made_utc, document FROM outcome WHERE run = ? ORDER BY id", (number,))
+        for outcome in connection.execute(
+            "SELECT made_utc, document FROM outcome WHERE run = ? ORDER BY id", (number,)
+        )
     ]
     return record
 
@@ -142,5 +168,8 @@ def samples(connection: sqlite3.Connection, name: str | int) -> NDArray[np.int64
     except ValueError:
         table = np.zeros((0, 18), dtype=np.int64)
     if hash_of(table) != row["samples_hash"]:
-        raise StoreError(f"The samples of R{number} are damaged.", remedy="Restore them from a backup; the outcome is kept apart.")
+        raise StoreError(
+            f"The samples of R{number} are damaged.",
+            remedy="Restore them from a backup; the outcome is kept apart.",
+        )
     return table

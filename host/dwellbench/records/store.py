@@ -1,8 +1,8 @@
 """The store: runs are begun, written, ended and found here.
 
-    with Store("bench.db") as store:
-        writer = store.begin_run(...)
-        writer.rows(rows); writer.event("state", {...}); writer.end("complete", None, outcome)
+with Store("bench.db") as store:
+    writer = store.begin_run(...)
+    writer.rows(rows); writer.event("state", {...}); writer.end("complete", None, outcome)
 """
 
 from __future__ import annotations
@@ -35,7 +35,9 @@ class Store:
     def __enter__(self) -> Store:
         return self
 
-    def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None) -> None:
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
         self.close()
 
     def close(self) -> None:
@@ -104,7 +106,9 @@ class Store:
             "INSERT INTO box (unique_id, model, first_seen_utc) VALUES (?, ?, ?) ON CONFLICT (unique_id) DO NOTHING",
             (box["box"], box["model"], now_utc()),
         )
-        return int(self._connection.execute("SELECT id FROM box WHERE unique_id = ?", (box["box"],)).fetchone()[0])
+        return int(
+            self._connection.execute("SELECT id FROM box WHERE unique_id = ?", (box["box"],)).fetchone()[0]
+        )
 
     def _calibration(self, box_id: int, calibration: dict[str, Any] | None) -> int | None:
         """Keep every version that was ever seen, by the hash of its contents."""
@@ -116,7 +120,9 @@ class Store:
             "INSERT INTO calibration (box, hash, document, first_seen_utc) VALUES (?, ?, ?, ?) ON CONFLICT (box, hash) DO NOTHING",
             (box_id, digest, document, now_utc()),
         )
-        row = self._connection.execute("SELECT id FROM calibration WHERE box = ? AND hash = ?", (box_id, digest)).fetchone()
+        row = self._connection.execute(
+            "SELECT id FROM calibration WHERE box = ? AND hash = ?", (box_id, digest)
+        ).fetchone()
         return int(row[0])
 
     # -- runs that a killed process left open
@@ -141,7 +147,8 @@ class Store:
         """With the box's lock held, whatever is open for it was left behind."""
         with explained(self.path):
             rows = self._connection.execute(
-                "SELECT run.id FROM run JOIN box ON box.id = run.box WHERE state = 'open' AND box.unique_id = ?", (box,)
+                "SELECT run.id FROM run JOIN box ON box.id = run.box WHERE state = 'open' AND box.unique_id = ?",
+                (box,),
             ).fetchall()
             for row in rows:
                 close_run(self._connection, row["id"], "interrupted", None, None, INTERRUPTED, None)

@@ -48,7 +48,9 @@ class RunWriter:
             return
         data = pack(self._held)
         with explained(self._path):
-            self._connection.execute("INSERT INTO sample_batch VALUES (?, ?, ?)", (self.id, self._batches, data))
+            self._connection.execute(
+                "INSERT INTO sample_batch VALUES (?, ?, ?)", (self.id, self._batches, data)
+            )
         self._batches += 1
         self._held = []
 
@@ -71,7 +73,9 @@ class RunWriter:
         self._close("interrupted", None, None, why, outcome)
         return self.id
 
-    def _close(self, state: str, end: str | None, fault: str | None, why: str | None, outcome: dict[str, Any] | None) -> None:
+    def _close(
+        self, state: str, end: str | None, fault: str | None, why: str | None, outcome: dict[str, Any] | None
+    ) -> None:
         if not self.open:
             return
         self.flush()
@@ -93,7 +97,9 @@ def close_run(
     """Pack a run's samples and set its end, in one transaction."""
     connection.execute("BEGIN IMMEDIATE")
     try:
-        batches = connection.execute("SELECT samples FROM sample_batch WHERE run = ? ORDER BY number", (run,)).fetchall()
+        batches = connection.execute(
+            "SELECT samples FROM sample_batch WHERE run = ? ORDER BY number", (run,)
+        ).fetchall()
         pieces = [unpack(row["samples"]) for row in batches]
         table = np.concatenate(pieces) if pieces else np.zeros((0, 18), dtype=np.int64)
         verdict = None if outcome is None else outcome.get("verdict")
@@ -105,7 +111,8 @@ def close_run(
         connection.execute("DELETE FROM sample_batch WHERE run = ?", (run,))
         if outcome is not None:
             connection.execute(
-                "INSERT INTO outcome (run, made_utc, document) VALUES (?, ?, ?)", (run, now_utc(), json.dumps(outcome))
+                "INSERT INTO outcome (run, made_utc, document) VALUES (?, ?, ?)",
+                (run, now_utc(), json.dumps(outcome)),
             )
         connection.execute("COMMIT")
     except BaseException:

@@ -154,8 +154,8 @@ class Client:
                 self._asked.pop(message["id"], None)
             return Refusal(message["id"], error["code"], error["message"], error.get("data"))
         id_ = message.get("id")
-        method = self._asked.pop(id_, None) if isinstance(id_, (int, str)) else None
-        if method is None or not isinstance(id_, (int, str)):
+        asked = self._asked.pop(id_, None) if isinstance(id_, (int, str)) else None
+        if asked is None or not isinstance(id_, (int, str)):
             raise schemas.WrongMessage("an answer to nothing that was asked")
-        schemas.check(f"result.{method}", message)
-        return Answer(id_, method, message["result"])
+        schemas.check(f"result.{asked}", message)
+        return Answer(id_, asked, message["result"])

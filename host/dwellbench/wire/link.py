@@ -91,7 +91,9 @@ def open_link(url: str, log: WireLog | None = None) -> Link:
     except DwellbenchError:
         raise
     except ValueError as error:
-        raise UsageError(f"{url} is not a port or URL that can be opened ({error}).", remedy=_SAY_WHICH) from None
+        raise UsageError(
+            f"{url} is not a port or URL that can be opened ({error}).", remedy=_SAY_WHICH
+        ) from None
     except LINK_ERRORS as error:
         raise _not_opened(url, error) from None
     return Link(url, port, log)
@@ -104,16 +106,25 @@ def _not_opened(url: str, error: BaseException) -> NoBoxError:
     text = str(error)
     number = getattr(error, "errno", None)
     if number == 13 or "Permission" in text:
-        return NoBoxError(f"You may not open {url}.", remedy="Join the group that owns the port (often dialout), then log in again.")
+        return NoBoxError(
+            f"You may not open {url}.",
+            remedy="Join the group that owns the port (often dialout), then log in again.",
+        )
     if number == 11 or "Resource temporarily unavailable" in text or "busy" in text.lower():
-        return NoBoxError(f"{url} is in use by another program.", remedy="Close the other program; one host drives a box at a time.")
+        return NoBoxError(
+            f"{url} is in use by another program.",
+            remedy="Close the other program; one host drives a box at a time.",
+        )
     if "refused" in text:
         return NoBoxError(f"Nothing listens at {url}.", remedy="Start the box or emulator there first.")
     return NoBoxError(f"There is nothing to open at {url}.", remedy=_SAY_WHICH)
 
 
 def _broke(url: str, error: BaseException) -> LinkError:
-    return LinkError(f"The link to {url} broke ({error}).", remedy="Check the cable. The box discharges the part by itself.")
+    return LinkError(
+        f"The link to {url} broke ({error}).",
+        remedy="Check the cable. The box discharges the part by itself.",
+    )
 
 
 def ports() -> list[dict[str, str]]:

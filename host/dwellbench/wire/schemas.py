@@ -27,7 +27,9 @@ def checker(name: str) -> Checker:
     """The compiled schema `name`, such as "event.samples"."""
     path = assets.protocol() / "schemas" / f"{name}.json"
     schema = json.loads(path.read_text(encoding="utf-8"))
-    compiled: Checker = fastjsonschema.compile(schema, use_default=False, handlers={"http": _deny, "https": _deny, "": _deny})
+    compiled: Checker = fastjsonschema.compile(
+        schema, use_default=False, handlers={"http": _deny, "https": _deny, "": _deny}
+    )
     return compiled
 
 

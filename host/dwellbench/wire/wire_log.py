@@ -21,7 +21,9 @@ class WireLog:
         try:
             self._file: IO[str] = path.open("a", encoding="utf-8")
         except OSError as error:
-            raise UsageError(f"{path} cannot be written: {error.strerror}.", remedy="Name another file for --wire-log.") from None
+            raise UsageError(
+                f"{path} cannot be written: {error.strerror}.", remedy="Name another file for --wire-log."
+            ) from None
         self._partial = {">": b"", "<": b""}
 
     def sent(self, now_s: float, data: bytes) -> None:

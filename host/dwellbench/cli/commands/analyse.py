@@ -34,25 +34,31 @@ Exit status: 0 fit, 3 unfit, 4 undecided, 2 wrong input.
 
 @click.command("analyse", help=_HELP)
 @click.argument("trace", type=click.Path(path_type=Path))
-@click.option("--part", "marking", metavar="MARKING", help="What is written on the part; the trace may say it itself.")
+@click.option(
+    "--part", "marking", metavar="MARKING", help="What is written on the part; the trace may say it itself."
+)
 @click.option("--role", metavar="PLACE", help="coupling, coupling@310V/470k, ... or any.")
 @click.option("--grade", type=click.Choice(GRADES), default="new", show_default=True, help="Which limits.")
 @click.option("--esr", type=float, metavar="OHM", help="Series resistance measured elsewhere.")
 @click.option("--section", type=int, metavar="N", help="Which section of a can, counted from 1.")
 @global_options
 @click.pass_context
-def command(ctx: click.Context, **given: Any) -> int:
+def command(ctx: click.Context, /, **given: Any) -> int:
     """Run the command."""
     options = ready(ctx, given)
     trace = read_csv(given["trace"])
     marking = given["marking"] or trace.text("marking")
     if not marking:
-        raise UsageError(f"{given['trace']} does not say what part it is of.", remedy="Say it with --part MARKING.")
+        raise UsageError(
+            f"{given['trace']} does not say what part it is of.", remedy="Say it with --part MARKING."
+        )
     part = chosen(Part.parse(marking), given["section"])
     tell_part(options, part)
     role = given["role"] or trace.text("role")
     role = options.places.get(role, role) if role else None
-    outcome = analyse(trace, part, role, grade=given["grade"], thresholds=options.thresholds, esr_ohm=given["esr"])
+    outcome = analyse(
+        trace, part, role, grade=given["grade"], thresholds=options.thresholds, esr_ohm=given["esr"]
+    )
     if options.json:
         options.document(outcome.as_json())
     else:

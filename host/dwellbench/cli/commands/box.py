@@ -30,10 +30,14 @@ Exit status: 0 done, 5 the box refused, 6 locked out, 7 no box or link lost.
 @click.command("box", help=_HELP)
 @click.option("--list", "list_", is_flag=True, help="List the serial ports of this computer.")
 @click.option("--acknowledge", is_flag=True, help="Take note of the latched reason and leave lockout.")
-@click.option("--shorted", is_flag=True, help="With --acknowledge: charge that was missing has been removed with a shorting stick.")
+@click.option(
+    "--shorted",
+    is_flag=True,
+    help="With --acknowledge: charge that was missing has been removed with a shorting stick.",
+)
 @global_options
 @click.pass_context
-def command(ctx: click.Context, **given: Any) -> int:
+def command(ctx: click.Context, /, **given: Any) -> int:
     """Run the command."""
     options = ready(ctx, given)
     if given["list_"]:

@@ -38,11 +38,17 @@ Examples
 
 @click.command("demo", help=_HELP)
 @click.option("--seed", type=int, default=7, show_default=True, help="Seed of all chance.")
-@click.option("--interpreter", type=click.Choice(("cpython", "micropython")), default="cpython", show_default=True, help="Who runs the firmware.")
+@click.option(
+    "--interpreter",
+    type=click.Choice(("cpython", "micropython")),
+    default="cpython",
+    show_default=True,
+    help="Who runs the firmware.",
+)
 @click.option("--strict", is_flag=True, help="End with the status of the worst part.")
 @global_options
 @click.pass_context
-def command(ctx: click.Context, **given: Any) -> int:
+def command(ctx: click.Context, /, **given: Any) -> int:
     """Run the command."""
     options = ready(ctx, given)
     if options.records is None:
@@ -63,11 +69,19 @@ def _work_through(options: Options, specs: tuple[PartSpec, ...]) -> list[Outcome
             box.wait_for(lambda now: now["lid"] == "closed", _FOR_THE_NEXT_S)
             part, place = Part.parse(spec.marking), Place.parse(spec.role or "any")
             plan = Plan.make(part, place, box.ratings)
-            outcome = bench.test_part(box, part, place, store=store, plan=plan, label=spec.label, role=spec.role or "any")
+            outcome = bench.test_part(
+                box, part, place, store=store, plan=plan, label=spec.label, role=spec.role or "any"
+            )
             outcomes.append(outcome)
             _tell(options, number, len(specs), spec, outcome)
-            if number < len(specs) and box.wait_for(lambda now: now["lid"] == "open", _FOR_THE_NEXT_S) is None:
-                raise BugError("The emulated operator did not take the part out.", remedy="Run it again with --wire-log FILE.")
+            if (
+                number < len(specs)
+                and box.wait_for(lambda now: now["lid"] == "open", _FOR_THE_NEXT_S) is None
+            ):
+                raise BugError(
+                    "The emulated operator did not take the part out.",
+                    remedy="Run it again with --wire-log FILE.",
+                )
     return outcomes
 
 
@@ -81,14 +95,37 @@ def _tell(options: Options, number: int, count: int, spec: PartSpec, outcome: Ou
 def _report(options: Options, specs: tuple[PartSpec, ...], outcomes: list[Outcome]) -> None:
     right = sum(outcome.verdict == spec.expect for spec, outcome in zip(specs, outcomes, strict=True))
     if options.json:
-        options.document({"event": "summary", "parts": len(outcomes), "as_expected": right, "records": str(options.records)}, line=True)
+        options.document(
+            {
+                "event": "summary",
+                "parts": len(outcomes),
+                "as_expected": right,
+                "records": str(options.records),
+            },
+            line=True,
+        )
         return
-    table = Table("label", "marking", "place", "invented truth", "verdict", "what next", title="A bin of invented parts (simulated)")
+    table = Table(
+        "label",
+        "marking",
+        "place",
+        "invented truth",
+        "verdict",
+        "what next",
+        title="A bin of invented parts (simulated)",
+    )
     for spec, outcome in zip(specs, outcomes, strict=True):
         mark = "" if outcome.verdict == spec.expect else f" (expected {spec.expect})"
         table.add_row(
-            spec.label, spec.marking, (spec.role or "any").replace("_", " "), spec.note or "", outcome.verdict + mark, say.next_words(outcome)
+            spec.label,
+            spec.marking,
+            (spec.role or "any").replace("_", " "),
+            spec.note or "",
+            outcome.verdict + mark,
+            say.next_words(outcome),
         )
     options.console().print(table)
-    options.say(f"{right} of {len(outcomes)} verdicts are right for their invented truth. Everything here is simulated.")
+    options.say(
+        f"{right} of {len(outcomes)} verdicts are right for their invented truth. Everything here is simulated."
+    )
     options.say(f"Look at one: dwellbench --records {options.records} records show R1")

@@ -26,22 +26,49 @@ Examples
 
 
 @click.command("emulate", help=_HELP)
-@click.option("--pty", type=click.Path(path_type=Path), metavar="LINK", help="Make a pseudo-terminal under this name.")
+@click.option(
+    "--pty", type=click.Path(path_type=Path), metavar="LINK", help="Make a pseudo-terminal under this name."
+)
 @click.option("--tcp", metavar="HOST:PORT", help="Listen there; port 0 takes a free one and says which.")
-@click.option("--scenario", default="film", metavar="FILE", help="A scenario file, or the name of a packaged one. [default: film]")
+@click.option(
+    "--scenario",
+    default="film",
+    metavar="FILE",
+    help="A scenario file, or the name of a packaged one. [default: film]",
+)
 @click.option("--seed", type=int, metavar="N", help="Seed of all chance; the scenario's if left out.")
-@click.option("--interpreter", type=click.Choice(sorted(INTERPRETERS)), default="cpython", show_default=True, help="Who runs the firmware.")
-@click.option("--speed", type=float, default=1.0, show_default=True, metavar="X", help="Virtual seconds a second; 1 is real time.")
-@click.option("--state", type=click.Path(path_type=Path), metavar="FILE", help="Keep the box in this file between calls.")
+@click.option(
+    "--interpreter",
+    type=click.Choice(sorted(INTERPRETERS)),
+    default="cpython",
+    show_default=True,
+    help="Who runs the firmware.",
+)
+@click.option(
+    "--speed",
+    type=float,
+    default=1.0,
+    show_default=True,
+    metavar="X",
+    help="Virtual seconds a second; 1 is real time.",
+)
+@click.option(
+    "--state",
+    type=click.Path(path_type=Path),
+    metavar="FILE",
+    help="Keep the box in this file between calls.",
+)
 @global_options
 @click.pass_context
-def command(ctx: click.Context, **given: Any) -> int:
+def command(ctx: click.Context, /, **given: Any) -> int:
     """Run the command."""
     options = ready(ctx, given)
     if (given["pty"] is None) == (given["tcp"] is None):
         raise UsageError("Say either --pty LINK or --tcp HOST:PORT.", remedy="See dwellbench emulate --help.")
     if not 0.01 <= given["speed"] <= 1000:
-        raise UsageError(f"A speed of {given['speed']:g} is not possible.", remedy="Choose 0.01 to 1000; 1 is real time.")
+        raise UsageError(
+            f"A speed of {given['speed']:g} is not possible.", remedy="Choose 0.01 to 1000; 1 is real time."
+        )
     opening = Opening(given["scenario"], given["seed"], given["state"], given["interpreter"])
     outlet = _outlet(given)
     try:
@@ -54,7 +81,9 @@ def command(ctx: click.Context, **given: Any) -> int:
     if options.json:
         options.document({"event": "serving", "url": str(name)}, line=True)
     else:
-        options.say(f"An emulated box is at {name} (scenario {given['scenario']}, speed {given['speed']:g}). Ctrl-C ends it.")
+        options.say(
+            f"An emulated box is at {name} (scenario {given['scenario']}, speed {given['speed']:g}). Ctrl-C ends it."
+        )
     serve(box, outlet, given["speed"], on_end=lambda: opening.leave(box))
     return 0
 
@@ -72,5 +101,7 @@ def _outlet(given: dict[str, Any]) -> Outlet:
         return Pty(given["pty"])
     host, _, port = given["tcp"].rpartition(":")
     if not port.isdigit() or int(port) > 65535:
-        raise UsageError(f"{given['tcp']!r} is not HOST:PORT.", remedy="Say, for example, --tcp 127.0.0.1:7777.")
+        raise UsageError(
+            f"{given['tcp']!r} is not HOST:PORT.", remedy="Say, for example, --tcp 127.0.0.1:7777."
+        )
     return Tcp(host or "127.0.0.1", int(port))

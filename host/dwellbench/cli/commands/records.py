@@ -46,7 +46,7 @@ Examples
 @click.option("--offset", type=click.IntRange(0), default=0, help="Skip so many, for the next page.")
 @global_options
 @click.pass_context
-def list_(ctx: click.Context, **given: Any) -> int:
+def list_(ctx: click.Context, /, **given: Any) -> int:
     """Run the command."""
     options = ready(ctx, given)
     where = {key: given[key] for key in ("text", "verdict", "label")}
@@ -55,14 +55,22 @@ def list_(ctx: click.Context, **given: Any) -> int:
         found = store.records(given["limit"], given["offset"], **where)
         total = store.count(**where)
     if options.json:
-        options.document({"records": [one.as_json() for one in found], "total": total, "offset": given["offset"]})
+        options.document(
+            {"records": [one.as_json() for one in found], "total": total, "offset": given["offset"]}
+        )
         return 0
     table = Table("record", "begun (UTC)", "label", "marking", "place", "verdict", "end")
     for one in found:
         end = one.fault or one.end or one.state
         simulated = " (simulated)" if one.simulated else ""
         table.add_row(
-            one.name, one.started_utc, one.label or "", one.marking, one.role or "", (one.verdict or "none") + simulated, end
+            one.name,
+            one.started_utc,
+            one.label or "",
+            one.marking,
+            one.role or "",
+            (one.verdict or "none") + simulated,
+            end,
         )
     options.console().print(table)
     options.say(f"{len(found)} of {total} records in {options.records_path}.")
@@ -93,7 +101,7 @@ Examples
 @click.argument("record")
 @global_options
 @click.pass_context
-def show(ctx: click.Context, **given: Any) -> int:
+def show(ctx: click.Context, /, **given: Any) -> int:
     """Run the command."""
     options = ready(ctx, given)
     with open_store(options) as store:
@@ -107,9 +115,15 @@ def show(ctx: click.Context, **given: Any) -> int:
 
 
 def _described(record: dict[str, Any]) -> list[str]:
-    told = [f"{record['record']}: {record['marking']}" + (f", label {record['label']}" if record["label"] else "")]
-    told.append(f"  begun {record['started_utc']}, {record['state']}, {record['sample_count']} rows of samples")
-    told.append(f"  box {record['box']} ({record['model']}), firmware {record['firmware']} build {record['build']}")
+    told = [
+        f"{record['record']}: {record['marking']}" + (f", label {record['label']}" if record["label"] else "")
+    ]
+    told.append(
+        f"  begun {record['started_utc']}, {record['state']}, {record['sample_count']} rows of samples"
+    )
+    told.append(
+        f"  box {record['box']} ({record['model']}), firmware {record['firmware']} build {record['build']}"
+    )
     if record["simulated"]:
         told.append("  simulated: made on an emulated box, not on a real part")
     if record["why"]:
@@ -118,7 +132,10 @@ def _described(record: dict[str, Any]) -> list[str]:
         told.append(f"  note: {record['note']}")
     for event in record["events"]:
         if event["kind"] == "state":
-            told.append(f"  {event['t'] / 1000:8.1f} s  {event['state']}" + (f" ({event['why']})" if event["why"] else ""))
+            told.append(
+                f"  {event['t'] / 1000:8.1f} s  {event['state']}"
+                + (f" ({event['why']})" if event["why"] else "")
+            )
         elif event["kind"] == "fault":
             told.append(f"  {event['t'] / 1000:8.1f} s  fault {event['fault']}")
     for outcome in record["outcomes"]:

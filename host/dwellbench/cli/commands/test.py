@@ -43,20 +43,38 @@ unusable, 130 stopped by you after proven discharge.
 
 @click.command("test", help=_HELP)
 @click.argument("marking")
-@click.option("--role", default="any", metavar="PLACE", help="coupling, coupling@310V/470k, ... or any (the default).")
+@click.option(
+    "--role", default="any", metavar="PLACE", help="coupling, coupling@310V/470k, ... or any (the default)."
+)
 @click.option("--volts", type=float, metavar="V", help="Test at this DC voltage.")
-@click.option("--dwell", metavar="SECONDS", help="Time of electrification; the usual one for the kind if left out.")
-@click.option("--grade", type=click.Choice(GRADES), default="new", show_default=True, help="Which limits: of a new part, its period's, aged.")
-@click.option("--esr", type=float, metavar="OHM", help="Series resistance measured elsewhere; it goes into the record.")
-@click.option("--looks", metavar="WORD", help=f"How it looks: {', '.join(bench.LOOKS)}. Only a sound part is energised.")
+@click.option(
+    "--dwell", metavar="SECONDS", help="Time of electrification; the usual one for the kind if left out."
+)
+@click.option(
+    "--grade",
+    type=click.Choice(GRADES),
+    default="new",
+    show_default=True,
+    help="Which limits: of a new part, its period's, aged.",
+)
+@click.option(
+    "--esr", type=float, metavar="OHM", help="Series resistance measured elsewhere; it goes into the record."
+)
+@click.option(
+    "--looks", metavar="WORD", help=f"How it looks: {', '.join(bench.LOOKS)}. Only a sound part is energised."
+)
 @click.option("--section", type=int, metavar="N", help="Which section of a can, counted from 1.")
 @click.option("--label", metavar="TEXT", help="Your own name for this part.")
 @click.option("--note", metavar="TEXT", help="Anything worth keeping with the record.")
-@click.option("--dry-run", is_flag=True, help="Show plan, voltage, time and limits; nothing is energised, no box is needed.")
+@click.option(
+    "--dry-run",
+    is_flag=True,
+    help="Show plan, voltage, time and limits; nothing is energised, no box is needed.",
+)
 @click.option("--yes", is_flag=True, help="The part is in and the lid is closed: do not ask.")
 @global_options
 @click.pass_context
-def command(ctx: click.Context, **given: Any) -> int:
+def command(ctx: click.Context, /, **given: Any) -> int:
     """Run the command."""
     options = ready(ctx, given)
     bench.refuse_looks(given["looks"])
@@ -109,7 +127,9 @@ def chosen(part: Part, section: int | None) -> Part:
             f"{part.marking!r} is a can of {count} sections; one is tested at a time.",
             remedy=f"Say which with --section 1 to {count}; tie the unused terminals to the common negative.",
         )
-    return replace(part.sections[section - 1], marking=f"{part.marking} (section {section})", doubts=part.doubts)
+    return replace(
+        part.sections[section - 1], marking=f"{part.marking} (section {section})", doubts=part.doubts
+    )
 
 
 def tell_part(options: Options, part: Part) -> None:
@@ -130,7 +150,9 @@ def _seconds(text: str | None) -> float | None:
     try:
         return float(text)
     except ValueError:
-        raise UsageError(f"{text!r} is not a time in seconds.", remedy="Say, for example, --dwell 60.") from None
+        raise UsageError(
+            f"{text!r} is not a time in seconds.", remedy="Say, for example, --dwell 60."
+        ) from None
 
 
 def _ask(part: Part) -> str:
@@ -142,10 +164,17 @@ def _dry_run(options: Options, part: Part, place: Place | None, role: str, given
     plan = _plan(part, place, Ratings(), given)
     ruling, informative = limits_for(part, part.capacitance_F, given["grade"])
     limits = [
-        {"id": limit.id, "source": limit.source, "status": limit.status, "rules": limit in ruling} for limit in (*ruling, *informative)
+        {"id": limit.id, "source": limit.source, "status": limit.status, "rules": limit in ruling}
+        for limit in (*ruling, *informative)
     ]
     if options.json:
-        document = {"part": part.as_json(), "role": role, "plan": plan.to_wire(), "explanation": plan.explain(), "limits": limits}
+        document = {
+            "part": part.as_json(),
+            "role": role,
+            "plan": plan.to_wire(),
+            "explanation": plan.explain(),
+            "limits": limits,
+        }
         options.document({**document, "energised": False})
         return 0
     options.say("Nothing is energised. The plan, for the reference box:")
@@ -155,9 +184,9 @@ def _dry_run(options: Options, part: Part, place: Place | None, role: str, given
         options.say(f"The place: {place.kind.what} ({place.role}); {place.kind.source}.")
     options.say("Limits for such a part:")
     for row in limits:
-        options.say(f"  {row['id']}: {row['source']} ({row['status']}){'' if row['rules'] else ', informative'}")
+        options.say(
+            f"  {row['id']}: {row['source']} ({row['status']}){'' if row['rules'] else ', informative'}"
+        )
     if not limits:
         options.say("  none are known for this kind; without a place the verdict will be undecided.")
     return 0
-
-

@@ -9,10 +9,11 @@ from __future__ import annotations
 
 from typing import Any
 
+from serial.serialutil import PortNotOpenError, SerialBase, SerialException
+
 from dwellbench.emulator.emulated_box import EmulatedBox
 from dwellbench.emulator.opening import Opening
 from dwellbench.errors import UsageError
-from serial.serialutil import PortNotOpenError, SerialBase, SerialException
 
 # Longer than anything the box does without saying a word (the longest charge of its largest part is 20 minutes).
 ENDLESS_S = 3600.0
@@ -23,6 +24,10 @@ class Serial(SerialBase):
 
     box: EmulatedBox
     _open_as: Opening
+    # set by the base class, which the published stubs do not say
+    _port: str | None
+    _timeout: float | None
+    _baudrate: int
 
     def open(self) -> None:
         """Switch the emulated box on. SerialException if it is open already."""
@@ -30,7 +35,7 @@ class Serial(SerialBase):
             raise SerialException("Port must be configured before it can be used.")
         if self.is_open:
             raise SerialException("Port is already open.")
-        self._open_as = Opening.from_url(self.port)
+        self._open_as = Opening.from_url(self._port)
         self.box = self._open_as.make()
         self.box.link.attach(True)
         self._cancelled = False

@@ -1,4 +1,6 @@
-"""The firmware's board under a desktop MicroPython, in lockstep with the emulated world over two pipes (their descriptors' numbers are in the environment).
+"""The firmware's board under a desktop MicroPython, in lockstep with the emulated world over two pipes.
+
+Their descriptors' numbers are in the environment.
 
 One exchange a period: outputs and bytes out, readings and bytes in. The bytes of the link travel inside the exchange, so that the
 same seed gives the same traffic. Ticks wrap at 2**30 as on the board. Other words (flash, scratch) are exchanges of their own.
@@ -10,7 +12,9 @@ import struct
 from dwellbox.board import Board
 
 _OUT_ROOM = 64
-_ASK = "<BBiBBbbBB"  # kind, outputs, supply_mv, pumps, feeds, conversion 0, conversion 1, bytes out, bytes taken
+_ASK = (
+    "<BBiBBbbBB"  # kind, outputs, supply_mv, pumps, feeds, conversion 0, conversion 1, bytes out, bytes taken
+)
 _ASK_SIZE = struct.calcsize(_ASK)
 _REPLY_SIZE = 12  # now_ms u32, inputs u8, codes 2 x i16, room u8, bytes in u8, which codes are none u8
 
