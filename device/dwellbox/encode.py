@@ -16,15 +16,20 @@ _SAMPLES = b'{"jsonrpc":"2.0","method":"samples","params":{"n":'
 _ROWS_END = b"]}"
 _CRC = b',"crc":"'
 _END = b'"}\n'
+_OPEN = const(91)
+_CLOSE = const(93)
+_COMMA = const(44)
 
 
 class Line:
-    """The line on its way out. `busy` until its last byte has been put."""
+    """The line on its way out. `busy` until its last byte has been put; `send` only when it is not `open`."""
 
     def __init__(self, boot):
         """Take the number of this start of the box."""
         self.busy = False
-        self.next_n = 0  # the event after the last one written
+        self.open = False  # rows are still to be written
+        self.next_n = 0  # the event after the last one of the line
+        self._row_n = 0
         self._boot = boot
         self._boot_rows = b',"boot":%d,"rows":[' % boot
         self._samples = bytearray(LINE)  # keeps its beginning, which is always the same
@@ -34,25 +39,42 @@ class Line:
         self._sent = 0
 
     def begin_samples(self, ring, n, stop):
-        """Write the line of the sample `n` and of those that follow it, ROWS at most, before `stop`. Allocates nothing."""
-        buffer = self._samples
-        at = put_number(buffer, len(_SAMPLES), n)
-        at = put_bytes(buffer, at, self._boot_rows, len(self._boot_rows))
+        """Begin the line of the sample `n` and of those that follow it, ROWS at most, before `stop`. Allocates nothing.
+
+        Its first row is written now; `write_row` writes the others, one a period, for each costs half a millisecond.
+        """
         last = n + ROWS
         if last > stop:
             last = stop
-        while True:
-            buffer[at] = 91
-            at = put_number(buffer, at + 1, n)
-            at = ring.put_row(n, buffer, at)
-            buffer[at] = 93
-            n += 1
-            if n >= last or ring.kind(n) != SAMPLE:
-                break
-            buffer[at + 1] = 44
-            at += 2
-        self.next_n = n
-        self._begin(buffer, put_bytes(buffer, at + 1, _ROWS_END, 2))
+        self.next_n = n + 1
+        while self.next_n < last and ring.kind(self.next_n) == SAMPLE:
+            self.next_n += 1
+        buffer = self._samples
+        at = put_number(buffer, len(_SAMPLES), n)
+        self._length = put_bytes(buffer, at, self._boot_rows, len(self._boot_rows))
+        self._row_n = n
+        self.busy = True
+        self.open = True
+        self.write_row(ring)
+
+    def write_row(self, ring):
+        """Write the next row, and after the last one the end of the line. Allocates nothing."""
+        n = self._row_n
+        buffer = self._samples
+        at = self._length
+        if n >= ring.first:
+            if buffer[at - 1] == _CLOSE:
+                buffer[at] = _COMMA
+                at += 1
+            buffer[at] = _OPEN
+            at = ring.put_row(n, buffer, put_number(buffer, at + 1, n))
+            buffer[at] = _CLOSE
+            at += 1
+        n += 1
+        self._row_n = n
+        self._length = at
+        if n >= self.next_n:
+            self._begin(buffer, put_bytes(buffer, at, _ROWS_END, 2))
 
     def begin_event(self, ring, n):
         """Write the line of an event that is not a sample. Allocates."""
@@ -90,6 +112,7 @@ class Line:
         self._source = buffer
         self._sent = 0
         self.busy = True
+        self.open = False
 
     def send(self, board, most):
         """Put up to `most` bytes while the board has room; return how many. Allocates nothing."""

@@ -18,7 +18,11 @@ from .row import FIELDS
 
 # CRC-32 (IEEE 802.3), reflected polynomial 0xEDB88320, four bits at a time.
 _NIBBLES = array("I", (0, 0x1DB71064, 0x3B6E20C8, 0x26D930AC, 0x76DC4190, 0x6B6B51F4, 0x4DB26158, 0x5005713C))
-_NIBBLES.extend(array("I", (0xEDB88320, 0xF00F9344, 0xD6D6A3E8, 0xCB61B38C, 0x9B64C2B0, 0x86D3D2D4, 0xA00AE278, 0xBDBDF21C)))
+_NIBBLES.extend(
+    array(
+        "I", (0xEDB88320, 0xF00F9344, 0xD6D6A3E8, 0xCB61B38C, 0x9B64C2B0, 0x86D3D2D4, 0xA00AE278, 0xBDBDF21C)
+    )
+)
 
 
 @micropython.viper

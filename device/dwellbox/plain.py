@@ -29,7 +29,12 @@ def put_row(rows, start, buffer, at):
     first, second, t, sv, si, vmin, vmax, imin, imax, vs, temp, counts = struct.unpack_from(FORM, rows, start)
     of_part = (counts & 31, sv, vmin, vmax)
     of_shunt = (counts >> 5 & 31, si, imin, imax, counts >> 10)
-    numbers = (t, first >> 4, second & 3, second >> 2 & 1) + of_part + of_shunt + (vs, temp, second >> 4, first >> 3 & 1)
+    numbers = (
+        (t, first >> 4, second & 3, second >> 2 & 1)
+        + of_part
+        + of_shunt
+        + (vs, temp, second >> 4, first >> 3 & 1)
+    )
     data = b",%d,%d,%d,%d,%d,%d,%d,%d,%d,%d,%d,%d,%d,%d,%d,%d,%d" % numbers
     end = at + len(data)
     buffer[at:end] = data

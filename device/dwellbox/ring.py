@@ -44,7 +44,9 @@ class Ring:
     def _piece(self, n):
         return self._pieces[n % self.capacity // _CHUNK]
 
-    def sample(self, t, stage, shunt, range_, nv, sv, vmin, vmax, ni, si, imin, imax, iclip, vs, temp, flags, vrange):
+    def sample(
+        self, t, stage, shunt, range_, nv, sv, vmin, vmax, ni, si, imin, imax, iclip, vs, temp, flags, vrange
+    ):
         """Keep one window; its counts are at most 31 each. Allocates nothing."""
         n = self._turn()
         rows = self._pieces[n % self.capacity // _CHUNK]

@@ -115,7 +115,9 @@ class Scanner:
         state = self._state
         if state == _STRING:
             length = self._length
-            if _PLAIN[byte] and length < _TEXT:  # nearly always; here rather than in a method, which would cost as much again
+            if (
+                _PLAIN[byte] and length < _TEXT
+            ):  # nearly always; here rather than in a method, which would cost as much again
                 self._text[length] = byte
                 self._length = length + 1
             else:

@@ -22,7 +22,7 @@ from .ring import SAMPLE
 from .rpc import NO_ID, judge
 from .scan import Scanner
 
-_IN = const(6)  # bytes a period, 1.2 kB/s: a host's longest request is in within 0.4 s
+_IN = const(5)  # bytes a period, 1.0 kB/s: a host's longest request is in within 0.5 s
 _OUT = const(10)  # 2.0 kB/s: ten samples a second need 1.0 to 1.7
 _OUT_BESIDE = const(2)  # while something else is done in the same period
 _LONGEST = const(511)  # bytes of a line before its newline
@@ -74,17 +74,20 @@ class Wire:
             self._serve(now)
         except Exception:
             self._line.busy = False
+            self._line.open = False
             self.dropped += 1
 
     def _serve(self, now):
         line = self._line
         if self._work:
             self._go_on(now)
-            if line.busy and line.send(self._board, _OUT_BESIDE):
+            if line.busy and not line.open and line.send(self._board, _OUT_BESIDE):
                 self._moved_ms = now
             return
         taken = self._take(now)
-        if line.busy:
+        if line.open:
+            line.write_row(self._ring)
+        elif line.busy:
             if line.send(self._board, _OUT_BESIDE if taken else _OUT):
                 self._moved_ms = now
         elif not self._next():

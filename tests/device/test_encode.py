@@ -39,9 +39,12 @@ class Sink:
         self.data.append(byte)
 
 
-def sent(line: Line, rooms: list[int], most: int = 32) -> bytes:
-    """Send a line as the wire does; every period is bounded."""
+def sent(line: Line, rooms: list[int], most: int = 32, ring: Ring | None = None) -> bytes:
+    """Write the rest of a line, then send it, as the wire does; every period is bounded."""
     sink = Sink(rooms)
+    while line.open:
+        assert ring is not None
+        line.write_row(ring)
     while line.busy:
         sink.next_period()
         before = len(sink.data)
@@ -58,7 +61,9 @@ def checked(data: bytes) -> dict[str, Any]:
     assert tail == b'"%08x"}\n' % zlib.crc32(body)
     message: dict[str, Any] = json.loads(data)
     assert list(message)[-1] == "crc"
-    assert data == json.dumps(message, separators=(",", ":"), ensure_ascii=False).encode() + b"\n", "compact JSON"
+    assert data == json.dumps(message, separators=(",", ":"), ensure_ascii=False).encode() + b"\n", (
+        "compact JSON"
+    )
     return message
 
 
@@ -68,7 +73,9 @@ def test_text(value: Any, expected: str) -> None:
     json.loads(expected)
 
 
-_plain = st.none() | st.booleans() | st.integers() | st.text(st.characters(exclude_categories=["Cs"]), max_size=20)
+_plain = (
+    st.none() | st.booleans() | st.integers() | st.text(st.characters(exclude_categories=["Cs"]), max_size=20)
+)
 
 
 _name = st.text("abcxyz_0", min_size=1, max_size=5)  # names are the firmware's own
@@ -96,7 +103,9 @@ def test_sample_line(row: tuple[int, ...], rooms: list[int]) -> None:
     assert not line.busy
 
 
-@pytest.mark.parametrize(("count", "stop", "lengths"), [(2, 2, [2]), (3, 3, [3]), (7, 7, [3, 3, 1]), (7, 2, [2])])
+@pytest.mark.parametrize(
+    ("count", "stop", "lengths"), [(2, 2, [2]), (3, 3, [3]), (7, 7, [3, 3, 1]), (7, 2, [2])]
+)
 def test_rows_that_follow_each_other_share_a_line(count: int, stop: int, lengths: list[int]) -> None:
     ring = Ring(64)
     for k in range(count):
@@ -105,7 +114,7 @@ def test_rows_that_follow_each_other_share_a_line(count: int, stop: int, lengths
     n = 0
     for length in lengths:
         line.begin_samples(ring, n, stop)
-        params = checked(sent(line, [64]))["params"]
+        params = checked(sent(line, [64], ring=ring))["params"]
         assert params["n"] == n
         assert params["rows"] == [[m, m, *ROWS[1][1:]] for m in range(n, n + length)]
         n += length
@@ -130,7 +139,25 @@ def test_the_longest_rows_fit() -> None:
     ring = Ring(64)
     first = 2**30 - 1 - ROWS_A_LINE
     ring.n = ring.first = first
-    longest = (2**30 - 1, 11, 2, 1, 31, -1015808, -32768, -32768, 31, -1015808, -32768, -32768, 31, -32768, -32768, 15, 1)
+    longest = (
+        2**30 - 1,
+        11,
+        2,
+        1,
+        31,
+        -1015808,
+        -32768,
+        -32768,
+        31,
+        -1015808,
+        -32768,
+        -32768,
+        31,
+        -32768,
+        -32768,
+        15,
+        1,
+    )
     for _ in range(ROWS_A_LINE):
         ring.sample(*longest)
     line = Line(9999999)
@@ -139,11 +166,31 @@ def test_the_longest_rows_fit() -> None:
     assert checked(data)["params"]["rows"] == [[first, *longest]]
     assert len(data) <= 220, "a sample line stays short: ten a second on the slowest link"
     line.begin_samples(ring, first, ring.n)
-    assert checked(sent(line, [64]))["params"]["rows"] == [[first + k, *longest] for k in range(ROWS_A_LINE)]
+    assert checked(sent(line, [64], ring=ring))["params"]["rows"] == [
+        [first + k, *longest] for k in range(ROWS_A_LINE)
+    ]
+
+
+def test_rows_written_over_before_their_turn_are_left_out() -> None:
+    ring = Ring(64)
+    for k in range(64):
+        ring.sample(k, *ROWS[1][1:])
+    line = Line(7)
+    line.begin_samples(ring, 0, 3)
+    for _ in range(2):
+        ring.log(0, "over the first two")
+    assert checked(sent(line, [64], ring=ring))["params"]["rows"] == [
+        [0, 0, *ROWS[1][1:]],
+        [2, 2, *ROWS[1][1:]],
+    ]
 
 
 EVENTS = (
-    ("state", lambda ring: ring.state(5, DWELL, ST_DWELL, "up"), {"t": 5, "state": "dwell", "stage": "dwell", "why": "up"}),
+    (
+        "state",
+        lambda ring: ring.state(5, DWELL, ST_DWELL, "up"),
+        {"t": 5, "state": "dwell", "stage": "dwell", "why": "up"},
+    ),
     (
         "fault",
         lambda ring: ring.fault(-1, FAULT_LID_OPEN, DWELL, 3),

@@ -15,7 +15,7 @@ from dwellbox.encode import LINE
 from dwellbox.ring import Ring
 from dwellbox.wire import Refusal, Wire
 
-IN_A_PERIOD = 6
+IN_A_PERIOD = 5
 OUT_A_PERIOD = 10
 
 
@@ -77,7 +77,9 @@ def expected_answers(error: int, data: str | None, id_: Any) -> list[tuple[Any, 
 
 
 def brief(lines: list[dict[str, Any]]) -> list[tuple[Any, Any, Any]]:
-    return [(line["id"], line.get("error", {}).get("code"), line.get("error", {}).get("data")) for line in lines]
+    return [
+        (line["id"], line.get("error", {}).get("code"), line.get("error", {}).get("data")) for line in lines
+    ]
 
 
 def _answered(row: tuple[bytes, int, str | None, Any]) -> bool:
@@ -134,7 +136,13 @@ def test_work_of_a_period_is_bounded() -> None:
     bench.feed(asked("hello") + b"\n")
     for _ in range(30):
         bench.ring.sample(*ROWS[2])
-    bench.feed((asked("status") + b"\n") * 40 + b"\xff" * 3000 + b"\n" + asked("samples", '{"from":0,"count":30}') + b"\n")
+    bench.feed(
+        (asked("status") + b"\n") * 40
+        + b"\xff" * 3000
+        + b"\n"
+        + asked("samples", '{"from":0,"count":30}')
+        + b"\n"
+    )
     bench.step(2000)
     assert bench.board.most_taken <= IN_A_PERIOD
     assert bench.board.most_given <= OUT_A_PERIOD
@@ -417,7 +425,9 @@ def test_a_result_of_every_kind_of_value() -> None:
     }
 
 
-@pytest.mark.parametrize("pairs", [[("a", "x" * 600)], [(f"member{k:02}", 2**29) for k in range(60)]], ids=["one", "many"])
+@pytest.mark.parametrize(
+    "pairs", [[("a", "x" * 600)], [(f"member{k:02}", 2**29) for k in range(60)]], ids=["one", "many"]
+)
 def test_a_result_that_does_not_fit_is_a_defect_and_said_to_be_one(pairs: list[tuple[str, Any]]) -> None:
     bench = Answering()
     message = json.loads(bench.ask(pairs))
