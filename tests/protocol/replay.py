@@ -130,7 +130,9 @@ class Replay:
             return
         raise AssertionError(f"nothing of the kind came within {PATIENCE_MS} ms: {expected}")
 
-    def _compare(self, line: bytes, message: Entry, expected: str, wanted: Entry, compare: str | list[str]) -> None:
+    def _compare(
+        self, line: bytes, message: Entry, expected: str, wanted: Entry, compare: str | list[str]
+    ) -> None:
         if compare == "whole":
             assert line.decode() == expected
             return

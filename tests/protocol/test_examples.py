@@ -23,7 +23,9 @@ from dwellbench.wire.core import unseal
 
 FILES = replay.files()
 NAMES = [path.stem for path in FILES]
-METHODS = sorted(path.stem.partition(".")[2] for path in (assets.protocol() / "schemas").glob("request.*.json"))
+METHODS = sorted(
+    path.stem.partition(".")[2] for path in (assets.protocol() / "schemas").glob("request.*.json")
+)
 
 
 def micropython() -> type[EmulatedBox]:
@@ -86,7 +88,9 @@ def lines(direction: str) -> Iterator[tuple[str, dict[str, Any]]]:
 
 
 def strict(name: str) -> Draft7Validator:
-    return Draft7Validator(json.loads((assets.protocol() / "schemas" / f"{name}.json").read_text(encoding="utf-8")))
+    return Draft7Validator(
+        json.loads((assets.protocol() / "schemas" / f"{name}.json").read_text(encoding="utf-8"))
+    )
 
 
 def reason(line: str) -> str | None:
