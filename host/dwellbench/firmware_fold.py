@@ -113,7 +113,9 @@ def _value(node: ast.expr, known: _Consts) -> int | None:
         if left is None or right is None:
             return None
         whole = ast.Expression(ast.BinOp(ast.Constant(left), node.op, ast.Constant(right)))
-        return int(eval(compile(ast.fix_missing_locations(whole), "<constant>", "eval"), {"__builtins__": {}}))
+        return int(
+            eval(compile(ast.fix_missing_locations(whole), "<constant>", "eval"), {"__builtins__": {}})
+        )
     return None
 
 
@@ -131,7 +133,9 @@ class _Fold(ast.NodeTransformer):
         if node.id not in self.known:
             return node
         if not isinstance(node.ctx, ast.Load):
-            raise BugError(f"{self.name}: {node.id} is a constant and is assigned again in line {node.lineno}.")
+            raise BugError(
+                f"{self.name}: {node.id} is a constant and is assigned again in line {node.lineno}."
+            )
         return ast.copy_location(ast.Constant(self.known[node.id]), node)
 
     def visit_arg(self, node: ast.arg) -> ast.arg:
@@ -161,7 +165,11 @@ class _Fold(ast.NodeTransformer):
 
     def visit_FunctionDef(self, node: ast.FunctionDef) -> ast.FunctionDef | None:
         body = _without_words(node.body)
-        if len(body) == 1 and isinstance(body[0], ast.Raise) and ast.unparse(body[0]) == "raise NotImplementedError":
+        if (
+            len(body) == 1
+            and isinstance(body[0], ast.Raise)
+            and ast.unparse(body[0]) == "raise NotImplementedError"
+        ):
             return None
         node.body = body or [ast.Pass()]
         self.generic_visit(node)
@@ -176,7 +184,11 @@ class _Fold(ast.NodeTransformer):
 
 def _without_words(body: list[ast.stmt]) -> list[ast.stmt]:
     first = body[0]
-    if isinstance(first, ast.Expr) and isinstance(first.value, ast.Constant) and isinstance(first.value.value, str):
+    if (
+        isinstance(first, ast.Expr)
+        and isinstance(first.value, ast.Constant)
+        and isinstance(first.value.value, str)
+    ):
         return body[1:]
     return body
 
