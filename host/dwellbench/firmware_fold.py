@@ -122,26 +122,31 @@ def _value(node: ast.expr, known: _Consts) -> int | None:
 # ---- rewriting
 
 
+def _binds(node: ast.AST) -> list[str]:
+    """The names that a node gives a meaning."""
+    if isinstance(node, ast.Name):
+        return [] if isinstance(node.ctx, ast.Load) else [node.id]
+    if isinstance(node, ast.arg):
+        return [node.arg]
+    if isinstance(node, (ast.FunctionDef, ast.ClassDef)) or (
+        isinstance(node, ast.ExceptHandler) and node.name
+    ):
+        return [str(node.name)]
+    if isinstance(node, (ast.Import, ast.ImportFrom)):
+        return [alias.asname or alias.name for alias in node.names]
+    return node.names if isinstance(node, ast.Global) else []
+
+
 class _Fold(ast.NodeTransformer):
     """Puts literals in, and takes out what then has no use."""
 
-    def __init__(self, name: str, known: _Consts) -> None:
-        self.name = name
+    def __init__(self, known: _Consts) -> None:
         self.known = known
 
     def visit_Name(self, node: ast.Name) -> ast.expr:
         if node.id not in self.known:
             return node
-        if not isinstance(node.ctx, ast.Load):
-            raise BugError(
-                f"{self.name}: {node.id} is a constant and is assigned again in line {node.lineno}."
-            )
         return ast.copy_location(ast.Constant(self.known[node.id]), node)
-
-    def visit_arg(self, node: ast.arg) -> ast.arg:
-        if node.arg in self.known:
-            raise BugError(f"{self.name}: {node.arg} is a constant and a parameter in line {node.lineno}.")
-        return node
 
     def visit_BinOp(self, node: ast.BinOp) -> ast.expr:
         value = _value(node, self.known)
@@ -196,6 +201,10 @@ def _without_words(body: list[ast.stmt]) -> list[ast.stmt]:
 def _rewrite(name: str, module: _Module, known: _Consts) -> str:
     """The module's text with every constant of `known` in its place."""
     tree = module.tree
+    bound = [found for node in ast.walk(tree) for found in _binds(node)]
+    for constant in known:
+        if bound.count(constant) > 1:
+            raise BugError(f"{name}: {constant} is a constant and is bound to something else as well.")
     tree.body = _without_words(tree.body) if tree.body else []
-    folded = _Fold(name, known).visit(tree)
+    folded = _Fold(known).visit(tree)
     return ast.unparse(ast.fix_missing_locations(folded)) + "\n"
