@@ -24,6 +24,7 @@ _OPEN_SHARE = 0.02
 _SHORT_V_SHARE = 0.05
 _SHORT_A_SHARE = 0.8
 _FORMING_PER_S = -0.1 / 60.0  # falls by more than a tenth a minute
+_FORMING_OVER_PER_S = -0.03 / 60.0  # above its limit: what falls like this for an hour may come below it
 _POLAR = ("electrolytic", "tantalum")
 _SUPERLINEAR = 1.5
 _CHARGING_SHARE = 0.1
@@ -107,16 +108,17 @@ def _events(case: Case) -> Finding | None:
     return Finding("intermittent" if events.count > 1 else "burst", evidence)
 
 
-def _forming(case: Case) -> Finding | None:
+def _forming(case: Case, rows: list[Row]) -> Finding | None:
+    """An electrolytic whose current still falls: fast, or so high that it matters how it goes on."""
     leak = case.leakage
-    if leak is None or case.part.dielectric not in _POLAR or leak.slope_per_s > _FORMING_PER_S:
+    if leak is None or case.part.dielectric not in _POLAR or leak.through_A < 5.0 * leak.u_through_A:
         return None
-    if leak.through_A < 5.0 * leak.u_through_A:
+    bounds = [row.most_A for row in insulation_rows(rows) if row.most_A is not None]
+    over = bool(bounds) and leak.through_A > min(bounds)
+    if leak.slope_per_s > (_FORMING_OVER_PER_S if over else _FORMING_PER_S):
         return None
-    return Finding(
-        "forming",
-        f"The current still falls by {-6000.0 * leak.slope_per_s:.2g} % a minute at the end of the dwell.",
-    )
+    falls = f"{-6000.0 * leak.slope_per_s:.2g} % a minute"
+    return Finding("forming", f"The current still falls by {falls} at the end of the dwell.")
 
 
 def _rising(case: Case) -> Finding | None:
@@ -252,7 +254,6 @@ _LOOKS: tuple[Callable[[Case], Finding | None], ...] = (
     _clipped,
     _unsettled,
     _events,
-    _forming,
     _rising,
     _superlinear,
     _disagree,
@@ -261,4 +262,9 @@ _LOOKS: tuple[Callable[[Case], Finding | None], ...] = (
     _residual,
     _uncalibrated,
 )
-_WEIGHED: tuple[Callable[[Case, list[Row]], Finding | None], ...] = (_charging, _fixture, _value_off)
+_WEIGHED: tuple[Callable[[Case, list[Row]], Finding | None], ...] = (
+    _forming,
+    _charging,
+    _fixture,
+    _value_off,
+)

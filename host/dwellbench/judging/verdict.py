@@ -10,9 +10,11 @@ from dwellbench.judging.case import Case
 from dwellbench.judging.rows import Row, insulation_rows
 from dwellbench.judging.say import si, volts
 from dwellbench.limits.decide import FIT, UNDECIDED, UNFIT
+from dwellbench.limits.demands import VISIBLE_OHM
 from dwellbench.outcome import Finding
 
 _CHECK_ESR = ("electrolytic",)
+_FORMED = ("electrolytic", "tantalum")
 _INSIDE = ("paper", "electrolytic", "tantalum", None)  # what leaks there leaks inside, not over its surface
 _SURFACE_OHM = (
     1e8  # a dirty or damp surface leaks like this or less (from memory: 10 to 100 Gohm); worse is inside
@@ -262,4 +264,11 @@ def _next_unfit(case: Case, rows: list[Row], ids: dict[str, str], elsewhere: boo
     high = ohm is not None and (ohm.value or ohm.low or 0.0) >= _SURFACE_OHM
     if leaks and high and case.part.dielectric not in _INSIDE:
         return "clean_and_retest"
+    if (
+        ohm is not None
+        and ohm.high is not None
+        and ohm.high < VISIBLE_OHM
+        and case.part.dielectric not in _FORMED
+    ):
+        return "scrap"
     return "other_place" if elsewhere and case.place is not None else "scrap"

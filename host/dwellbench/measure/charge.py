@@ -115,6 +115,8 @@ def charge_balance(
     trend_F = balance.trend_F(sums)
     doubts = [hypot(one.u_own, (one.value - sums[0].value) / 2.0) for one in sums]
     best = int(np.argmin(doubts))
+    if not np.isfinite(doubts[best]):
+        return None  # the voltage only fell
     farads = sums[best].value - (trend_F if best == 0 else 0.0)
     u_own = hypot(doubts[best], trend_F / 2.0, FIXTURE_U_F)
     u_shared = abs(farads) * hypot(circuit.u_gain_i, circuit.u_gain_v)
@@ -179,14 +181,14 @@ class _Balance:
 
     def share(self, cut: int) -> float:
         """Voltage at the cut as a share of that at the end."""
-        return float(self.volts[cut] / self.volts[-1])
+        return float(self.volts[cut] / self.volts[-1]) if self.volts[-1] else 1.0
 
     def with_late(self, leaks: Leaks) -> Leaks:
         """The leaks known from elsewhere, and the one at the end of this charge."""
         late_S = self._late_S()
         if late_S is not None:
             return Leaks(leaks.first_S if leaks.first_S is not None else leaks.last_S, late_S)
-        if leaks.last_S is None:
+        if leaks.last_S is None and self.volts[-1] > 0.0:
             return Leaks(0.0, max(float(self.amps[-1] / self.volts[-1]), 0.0))
         return leaks
 
@@ -199,6 +201,8 @@ class _Balance:
             first = len(self.t) - _STEADY_ROWS
         late = slice(first, min(first + 4 * _STEADY_ROWS, len(self.t)))
         t, volts, amps = self.t[late], self.volts[late], self.amps[late]
+        if float(np.mean(volts)) <= 0.0 or self.volts[self.full] <= self.volts[0]:
+            return None
         slope = float(np.polynomial.polynomial.polyfit(t - t[0], volts, 1)[1])
         rise_V = float(self.volts[self.full] - self.volts[0])
         siemens = 0.0

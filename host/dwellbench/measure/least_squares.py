@@ -93,32 +93,41 @@ def least_squares(
     `scale` is the usual size of each parameter, for the differences; where it is left out the start's.
     Residuals may be infinite where the parameters make no sense. Returns None when no minimum is found.
     """
-    parameters = np.asarray(start, dtype=float)
+    with np.errstate(all="ignore"):  # a search may look where the model overflows; such places are not taken
+        return _search(residuals, np.asarray(start, dtype=float), scale, still, most_steps)
+
+
+def _search(
+    residuals: Residuals, parameters: Floats, scale: Floats | None, still: float, most_steps: int
+) -> Fit | None:
     size = np.abs(parameters) if scale is None else np.asarray(scale, dtype=float)
-    now = residuals(parameters)
-    chi2 = float(now @ now)
-    damp = _DAMP_FIRST
+    now, damp = residuals(parameters), _DAMP_FIRST
     for steps in range(1, most_steps + 1):
-        slopes = _slopes(residuals, parameters, size)
-        normal, pull = slopes.T @ slopes, slopes.T @ now
-        weight = np.diag(normal).copy()
-        weight[weight <= 0.0] = 1.0
-        moved = False
-        while damp < _DAMP_MOST:
-            step = np.linalg.solve(normal + damp * np.diag(weight), -pull)
-            there = residuals(parameters + step)
-            after = float(there @ there)
-            if np.isfinite(after) and after <= chi2:
-                moved = True
-                break
-            damp *= 8.0
-        if not moved:
-            return _done(residuals, parameters, size, chi2, steps)
-        rests = bool(np.all(np.abs(step) <= still * np.maximum(np.abs(parameters), size)))
-        parameters, now, chi2 = parameters + step, there, after
-        damp = max(damp / 9.0, 1e-15)
-        if rests:
-            return _done(residuals, parameters, size, chi2, steps)
+        better = _better(residuals, parameters, now, size, damp)
+        if better is None:
+            return _done(residuals, parameters, size, float(now @ now), steps)
+        step, now, damp = better
+        parameters = parameters + step
+        if np.all(np.abs(step) <= still * np.maximum(np.abs(parameters), size)):
+            return _done(residuals, parameters, size, float(now @ now), steps)
+    return None
+
+
+def _better(
+    residuals: Residuals, parameters: Floats, now: Floats, size: Floats, damp: float
+) -> tuple[Floats, Floats, float] | None:
+    """A step that does not make the sum of squares larger: (step, residuals there, damping to go on with); None: there is
+    none, however short."""
+    slopes = _slopes(residuals, parameters, size)
+    normal, pull = slopes.T @ slopes, slopes.T @ now
+    weight = np.diag(normal).copy()
+    weight[~(weight > 0.0)] = 1.0
+    while damp < _DAMP_MOST and np.isfinite(normal).all():
+        step = np.linalg.solve(normal + damp * np.diag(weight), -pull)
+        there = residuals(parameters + step)
+        if float(there @ there) <= float(now @ now):
+            return np.asarray(step, dtype=np.float64), there, max(damp / 9.0, 1e-15)
+        damp *= 8.0
     return None
 
 
