@@ -12,6 +12,7 @@ from typing import Any
 
 from dwellbench.errors import UsageError
 from dwellbench.judging.case import Case
+from dwellbench.judging.early import Early, early, stricter
 from dwellbench.judging.ends import MEASURED, ended
 from dwellbench.judging.findings import findings
 from dwellbench.judging.notes import assumed, not_tested, notes
@@ -90,6 +91,19 @@ def judge(
     if case.end not in MEASURED or not trace.rows("dwell").any():
         return _early(case)
     return _measured(case)
+
+
+def may_end(
+    trace: Trace,
+    part: Part,
+    place: Place | None = None,
+    *,
+    grade: str = "new",
+    thresholds: Thresholds | None = None,
+) -> Early | None:
+    """Say whether the dwell of a run under way may end now, and why; None: hold on. `trace` is what has come so far."""
+    now = judge(trace, part, place, grade=grade, end="finished", thresholds=stricter(thresholds))
+    return early(now, part, place)
 
 
 def _named(fault: str | None) -> str | None:

@@ -16,8 +16,7 @@ import numpy as np
 
 from dwellbench.emulator.direct import record
 from dwellbench.emulator.part_spec import LateLeak, PartSpec
-from dwellbench.judge import judge
-from dwellbench.judging.early import may_end
+from dwellbench.judge import judge, may_end
 from dwellbench.limits.place import Place
 from dwellbench.measure.calibrate import calibrate
 from dwellbench.measure.calibration import Calibration

@@ -13,8 +13,9 @@ import pytest
 
 from dwellbench.emulator.direct import record
 from dwellbench.emulator.part_spec import PartSpec
-from dwellbench.judge import judge
-from dwellbench.judging.early import LEAST_S, may_end
+from dwellbench.judge import judge, may_end
+from dwellbench.judging.early import LEAST_S, SURE, stricter
+from dwellbench.limits.decide import Thresholds
 from dwellbench.limits.place import Place
 from dwellbench.measure.calibrate import calibrate
 from dwellbench.measure.calibration import Calibration
@@ -95,3 +96,9 @@ def test_what_ends_early_would_have_ended_alike() -> None:
             ended += 1
             assert judge(trace, part, PLACE).verdict == early.verdict, (seed, farads, ohm)
     assert ended >= 20
+
+
+def test_the_users_own_thresholds_stand_where_they_ask_for_more() -> None:
+    assert stricter(None) == SURE
+    assert stricter(Thresholds(0.9, 0.1)) == SURE
+    assert stricter(Thresholds(0.9999, 1e-5)) == Thresholds(0.9999, 1e-5)

@@ -13,10 +13,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from dwellbench.judge import judge
 from dwellbench.limits.decide import FIT, UNDECIDED, Thresholds
 from dwellbench.limits.place import Place
-from dwellbench.measure.trace import Trace
 from dwellbench.outcome import Outcome
 from dwellbench.part import Part
 
@@ -44,18 +42,11 @@ class Early:
     why: str
 
 
-def may_end(
-    trace: Trace,
-    part: Part,
-    place: Place | None = None,
-    *,
-    grade: str = "new",
-    thresholds: Thresholds | None = None,
-) -> Early | None:
-    """Say whether the dwell of a run under way may end now; None: hold on. `trace` is what has come so far."""
+def early(now: Outcome, part: Part, place: Place | None) -> Early | None:
+    """Say whether the dwell may end by `now`, the outcome of what has come so far, judged by `stricter` thresholds as a
+    run that was `finished`; None: hold on."""
     if part.dielectric in _SLOW or (place is not None and (place.never_fit or place.beyond_box)):
         return None
-    now = judge(trace, part, place, grade=grade, end="finished", thresholds=_stricter(thresholds))
     if now.verdict == UNDECIDED or now.dwell_s is None or now.dwell_s < LEAST_S:
         return None
     if now.verdict == FIT and _active(now):
@@ -66,8 +57,8 @@ def may_end(
     )
 
 
-def _stricter(thresholds: Thresholds | None) -> Thresholds:
-    """The user's own thresholds where they ask for more than being sure."""
+def stricter(thresholds: Thresholds | None) -> Thresholds:
+    """What counts as certain: the user's own thresholds where they ask for more."""
     if thresholds is None:
         return SURE
     return Thresholds(max(thresholds.accept, SURE.accept), min(thresholds.reject, SURE.reject))
