@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import hashlib
-import sys
 from functools import cache
 from pathlib import Path
 
@@ -32,13 +31,6 @@ def device() -> Path:
 def protocol() -> Path:
     """The folder of the wire's schemas and codes."""
     return _find("protocol", "codes.json")
-
-
-def use_firmware() -> None:
-    """Make `import dwellbox` find the packaged firmware; it is not installed as a package of its own."""
-    folder = str(device())
-    if folder not in sys.path:
-        sys.path.append(folder)
 
 
 @cache

@@ -325,6 +325,11 @@ class Box:
                 self._waiting.extend(self._stream.oldest_is(event.result["from"]))
         elif event.id is not None:
             self._answers[event.id] = event
+        elif isinstance(event, Refusal) and event.data == "another host is connected":
+            raise NoBoxError(
+                f"{self.url} is in use by another program.",
+                remedy="Close the other program; one host drives a box at a time.",
+            )
 
     def _notice(self, notice: Notice) -> None:
         if notice.params["boot"] != self.identity_boot:

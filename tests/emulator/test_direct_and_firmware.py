@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import statistics
 import zlib
 
 import pytest
@@ -71,6 +72,11 @@ def readings(rows: list[list[int]], calibration: dict) -> tuple[list[float], lis
     return amps, volts
 
 
+def typical(amps: list[float]) -> float:
+    """Of the last five windows: one with a slot lent to the reference has mains hum left in it."""
+    return statistics.median(amps[-5:])
+
+
 @pytest.mark.parametrize("name", PARTS)
 def test_firmware_driven_runs_agree(name):
     text, farad, volts = PARTS[name]
@@ -87,6 +93,6 @@ def test_firmware_driven_runs_agree(name):
     )
     ours = readings(direct.rows, direct.calibration)
     assert ours[1][-1] == pytest.approx(held, rel=5e-4)
-    for back in (30, 10, 1):  # windows before the end of the dwell
-        assert ours[0][-back] == pytest.approx(theirs[0][-back], rel=0.03, abs=3e-11)
+    for end in (-30, -10, len(ours[0])):  # windows before the end of the dwell
+        assert typical(ours[0][:end]) == pytest.approx(typical(theirs[0][:end]), rel=0.01, abs=3e-11)
     assert {tuple(r[SHUNT : RANGE + 1]) for r in direct.rows} == {tuple(r[SHUNT : RANGE + 1]) for r in rows}

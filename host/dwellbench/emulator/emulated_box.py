@@ -22,7 +22,9 @@ FLASH_PERIODS = 20
 class EmulatedBox:
     """Base of both: subclasses start, step and stop the controller."""
 
-    def __init__(self, scenario: Scenario, seed: int | None = None, *, time_scale: float | None = None) -> None:
+    def __init__(
+        self, scenario: Scenario, seed: int | None = None, *, time_scale: float | None = None
+    ) -> None:
         self.world = World(scenario, seed)
         self.link = LinkFifo()
         self.time_scale = time_scale  # virtual seconds a wall second; None: virtual time waits for the host

@@ -1,14 +1,15 @@
 """The board's link as a pair of bounded buffers, stalling as its USB serial does.
 
 Out: 256 bytes, as the board's USB stack keeps. While a host is there and does not read, the buffer fills and there is no room;
-with no host there is always room and what is put is lost. In: 512 bytes; what does not fit waits with the host.
-(Sizes: TinyUSB's defaults on that port, from memory.)
+with no host there is always room and what is put is lost. In: 512 bytes; what does not fit waits with the host, in a driver's
+buffer of 4096 bytes. (Sizes: defaults of that port's USB stack and of common serial drivers, from memory.)
 """
 
 from __future__ import annotations
 
 OUT_BYTES = 256
 IN_BYTES = 512
+HOST_BYTES = 4096
 
 
 class LinkFifo:
@@ -38,6 +39,10 @@ class LinkFifo:
         taken = bytes(self.out if most is None else self.out[:most])
         del self.out[: len(taken)]
         return taken
+
+    def host_room(self) -> int:
+        """How many bytes the host may write without waiting."""
+        return HOST_BYTES - len(self.waiting)
 
     def _refill(self) -> None:
         room = IN_BYTES - len(self.into)
@@ -69,7 +74,7 @@ class LinkFifo:
             self.lost += 1
 
     def drop(self) -> None:
-        """The cable loses what is under way, both ways."""
+        """What is under way is lost, both ways: the cable, or a controller that starts anew."""
         self.out.clear()
         self.into.clear()
         self.waiting.clear()

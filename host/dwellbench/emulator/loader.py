@@ -16,9 +16,8 @@ from typing import Any
 
 # What the board's MicroPython and CPython both have. `micropython` and `machine` are not in it: the firmware must do without
 # them where they are missing.
-SHARED = frozenset(
-    "array binascii collections errno gc hashlib io json math os random re select struct sys time".split()
-)
+SHARED = frozenset({"array", "binascii", "collections", "errno", "gc", "hashlib", "io", "json", "math"})
+SHARED |= {"os", "random", "re", "select", "struct", "sys", "time"}
 
 
 class Firmware:

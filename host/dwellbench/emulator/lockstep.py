@@ -6,11 +6,13 @@ pipes. The world only moves while the interpreter waits, so virtual time is exac
 
 from __future__ import annotations
 
+import contextlib
 import os
 import shutil
 import struct
 import subprocess
 import sys
+from collections.abc import Callable
 from pathlib import Path
 from typing import IO
 
@@ -25,6 +27,7 @@ _MOST_OUT = 64
 _REPLY = struct.Struct("<IBhhBBB")
 _ASK = struct.Struct("<BiBBbbBB")
 _WORD = struct.Struct("<BH")
+_NOW = struct.Struct("<IB")
 
 
 def interpreter() -> str:
@@ -46,11 +49,13 @@ class LockstepBox(EmulatedBox):
     main = "main.py"
     board = _BOARD  # where dwellboard lies
     firmware: Path | None = None  # None: the firmware's sources; else a folder of compiled ones
+    process: subprocess.Popen[bytes] | None = None
 
     def start(self) -> None:
         """Start the interpreter on the firmware's folder and go on to its first period."""
-        child_in, self._write = os.pipe()
-        self._read, child_out = os.pipe()
+        program = interpreter()
+        child_in, write = os.pipe()
+        read, child_out = os.pipe()
         firmware = self.firmware or assets.device()
         environment = {
             **os.environ,
@@ -59,23 +64,24 @@ class LockstepBox(EmulatedBox):
             "DWELLBOARD_OUT": str(child_out),
         }
         self.process = subprocess.Popen(
-            [interpreter(), "-X", f"heapsize={self.heap}", str(self.main)],
+            [program, "-X", f"heapsize={self.heap}", str(self.main)],
             cwd=firmware,
             env=environment,
             pass_fds=(child_in, child_out),
             stdin=subprocess.DEVNULL,
             stdout=subprocess.PIPE,
             stderr=subprocess.STDOUT,
+            start_new_session=True,  # Ctrl-C at a terminal is for the host, which still needs its box to stop a run in order
         )
         os.close(child_in)
         os.close(child_out)
-        self._from: IO[bytes] = os.fdopen(self._read, "rb", buffering=65536)
-        self._to: IO[bytes] = os.fdopen(self._write, "wb", buffering=0)
+        self._from: IO[bytes] = os.fdopen(read, "rb", buffering=65536)
+        self._to: IO[bytes] = os.fdopen(write, "wb", buffering=0)
         self._words()
 
     def stop(self) -> None:
         """End the interpreter."""
-        if getattr(self, "process", None) is None:
+        if self.process is None:
             return
         for pipe in (self._to, self._from):
             pipe.close()
@@ -83,6 +89,7 @@ class LockstepBox(EmulatedBox):
         self.process.wait()
         if self.process.stdout:
             self.process.stdout.close()
+        self.process = None
 
     def step(self) -> None:
         """Let the controller do one period on the readings it is owed, then advance the world by what it asked for."""
@@ -98,7 +105,11 @@ class LockstepBox(EmulatedBox):
         one = 0 if one == NO_CODE else one
         room = min(_MOST_OUT, link.room())
         head = _REPLY.pack(world.clock_ms(), world.inputs, zero, one, room, len(offered), none)
-        self._to.write(head + offered)
+        self._send(head + offered)
+
+    def _send(self, data: bytes) -> None:
+        with contextlib.suppress(BrokenPipeError):  # it has ended; the next read tells how
+            self._to.write(data)
 
     def _words(self) -> None:
         """Serve rare exchanges until a period's frame comes; the first one of a start has no world to advance yet."""
@@ -108,10 +119,13 @@ class LockstepBox(EmulatedBox):
                 self._period()
                 return
             if not kind:
-                self._died()
+                self._ended()
+            else:
+                self._word(kind)
+            if kind == b"H":
                 return
-            self._word(kind)
-            if kind in b"HX":
+            if self.plain:
+                self.idle()
                 return
 
     def _period(self) -> None:
@@ -124,29 +138,49 @@ class LockstepBox(EmulatedBox):
         self.world.period(bits, mv, pumps, feeds, zero, one)
 
     def _word(self, kind: bytes) -> None:
-        names, length = _WORD.unpack(self._from.read(3))
+        names, length = _WORD.unpack(self._from.read(_WORD.size))
         name = self._from.read(names).decode()
         data = self._from.read(length)
-        answer = b""
-        if kind == b"H":
-            about = (
-                f"{self.cause} {self.world.unique_id} {assets.build_hash()} {self.emulation()['time_scale']}"
-            )
-            answer = about.encode()
-        elif kind == b"K":
-            self.keep(name, data)
-        elif kind == b"G":
-            answer = b"+" + self.flash[name] if name in self.flash else b"-"
-        elif kind == b"S":
-            answer = str(self.scratch).encode()
-        elif kind == b"T":
-            self.scratch = int(data)
-        elif kind == b"X":
-            self.to_plain()
-        self._to.write(struct.pack("<H", len(answer)) + answer)
+        answer = _ANSWERS[kind](self, name, data)
+        self._send(struct.pack("<H", len(answer)) + answer)
 
-    def _died(self) -> None:
-        said = b""
-        if self.process.stdout:
-            said = self.process.stdout.read()
+    def _about(self, name: str, data: bytes) -> bytes:
+        return f"{self.cause} {self.world.unique_id} {assets.build_hash()} {self.emulation()['time_scale']}".encode()
+
+    def _keep(self, name: str, data: bytes) -> bytes:
+        """Time passes in this one: its answer tells what the clock and the inputs are afterwards."""
+        self.keep(name, data)
+        return _NOW.pack(self.world.clock_ms(), self.world.inputs)
+
+    def _kept(self, name: str, data: bytes) -> bytes:
+        return b"+" + self.flash[name] if name in self.flash else b"-"
+
+    def _scratch(self, name: str, data: bytes) -> bytes:
+        return str(self.scratch).encode()
+
+    def _set_scratch(self, name: str, data: bytes) -> bytes:
+        self.scratch = int(data)
+        return b""
+
+    def _leave(self, name: str, data: bytes) -> bytes:
+        self.to_plain()
+        return b""
+
+    def _ended(self) -> None:
+        """main.py has returned: into the plain interpreter, as on a board with its stop button held; or it has failed."""
+        assert self.process is not None
+        said = self.process.stdout.read() if self.process.stdout else b""
+        if self.process.wait() == 0:
+            self.to_plain()
+            return
         raise BugError("The firmware ended under MicroPython.", remedy=said.decode(errors="replace")[-2000:])
+
+
+_ANSWERS: dict[bytes, Callable[[LockstepBox, str, bytes], bytes]] = {
+    b"H": LockstepBox._about,
+    b"K": LockstepBox._keep,
+    b"G": LockstepBox._kept,
+    b"S": LockstepBox._scratch,
+    b"T": LockstepBox._set_scratch,
+    b"X": LockstepBox._leave,
+}

@@ -1,9 +1,9 @@
 """Which emulated box an `emu://` URL or the `emulate` command means.
 
-    emu://film?seed=7                        a packaged scenario
-    emu:///path/to/file.toml?seed=7          a file (three slashes)
-    emu://film?state=box.json                the box lives on in that file (state.py)
-    emu://film?interpreter=micropython       the firmware under MicroPython
+emu://film?seed=7                        a packaged scenario
+emu:///path/to/file.toml?seed=7          a file (three slashes)
+emu://film?state=box.json                the box lives on in that file (state.py)
+emu://film?interpreter=micropython       the firmware under MicroPython
 """
 
 from __future__ import annotations
@@ -92,7 +92,9 @@ def _query(url: str, text: str) -> dict[str, str]:
     query = urllib.parse.parse_qs(text, keep_blank_values=True)
     for key, values in query.items():
         if key not in _KEYS:
-            raise UsageError(f"{url}: the key {key!r} is not known.", remedy=f"Known are: {', '.join(sorted(_KEYS))}.")
+            raise UsageError(
+                f"{url}: the key {key!r} is not known.", remedy=f"Known are: {', '.join(sorted(_KEYS))}."
+            )
         if len(values) > 1:
             raise UsageError(f"{url}: {key} is said twice.", remedy="Say it once.")
     return {key: values[0] for key, values in query.items()}
@@ -103,4 +105,6 @@ def _seed(url: str, text: str | None) -> int | None:
         return None
     if text.isascii() and text.isdigit() and int(text) <= _MOST_SEED:
         return int(text)
-    raise UsageError(f"{url}: the seed must be a whole number from 0 to {_MOST_SEED}, not {text!r}.", remedy="Say seed=7.")
+    raise UsageError(
+        f"{url}: the seed must be a whole number from 0 to {_MOST_SEED}, not {text!r}.", remedy="Say seed=7."
+    )

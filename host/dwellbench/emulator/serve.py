@@ -8,10 +8,13 @@ from __future__ import annotations
 
 import contextlib
 import errno
+import json
 import os
 import select
 import socket
 import time
+import zlib
+from collections import deque
 from collections.abc import Callable
 from pathlib import Path
 from typing import Protocol
@@ -27,11 +30,22 @@ from dwellbench.errors import UsageError
 _PERIOD_S = 0.005
 _BEHIND_S = 0.25  # further behind than this (a slow or suspended computer) and the world is not caught up
 _CHUNK = 4096
-_BUSY_LINE = b'{"jsonrpc":"2.0","error":{"code":-32017,"message":"A run is under way","data":"another host is connected"},"id":null}\n'
+_GIVEN_UP = 8  # clients sent away whose farewell is still on its way
+
+
+def _busy_line() -> bytes:
+    """What a second host is told. The box itself knows one host only."""
+    error = {"code": -32010, "message": "Not in this state", "data": "another host is connected"}
+    body = json.dumps({"jsonrpc": "2.0", "error": error, "id": None}, separators=(",", ":"))[:-1].encode()
+    return body + b',"crc":"%08x"}\n' % zlib.crc32(body)
 
 
 class Outlet(Protocol):
     """Where the bytes go."""
+
+    @property
+    def held(self) -> bool:
+        """Bytes that the reader has not made room for yet."""
 
     def exchange(self, box: EmulatedBox, wait_s: float) -> None:
         """Wait up to `wait_s` for bytes or room, and move what can be moved."""
@@ -44,6 +58,8 @@ class Pty:
     """A pseudo-terminal under a symbolic link of the user's choice."""
 
     def __init__(self, link: Path) -> None:
+        if not hasattr(os, "openpty") or tty is None:
+            raise UsageError("This computer has no pseudo-terminals.", remedy="Use --tcp.")
         if link.is_symlink() and not link.exists():
             link.unlink()  # left behind by a process that was killed
         if link.exists() or link.is_symlink():
@@ -60,9 +76,16 @@ class Pty:
         try:
             link.symlink_to(self.name)
         except OSError as error:
+            self._release()
             raise UsageError(
-                f"{link} cannot be made: {error.strerror}.", remedy="Choose a folder you may write to."
+                f"{link} cannot be made: {error.strerror}.",
+                remedy="Choose a folder you may write to.",
             ) from None
+
+    @property
+    def held(self) -> bool:
+        """Bytes that the reader has not made room for yet."""
+        return bool(self._held)
 
     def exchange(self, box: EmulatedBox, wait_s: float) -> None:
         """Nobody knows whether a host has the slave open, so one is taken to be there."""
@@ -79,9 +102,13 @@ class Pty:
                 box.link.push(os.read(self._master, _CHUNK))
 
     def close(self) -> None:
-        """Remove the link."""
-        with contextlib.suppress(FileNotFoundError):
-            self._link.unlink()
+        """Remove the link, if it is still ours."""
+        with contextlib.suppress(OSError):
+            if os.readlink(self._link) == self.name:
+                self._link.unlink()
+        self._release()
+
+    def _release(self) -> None:
         os.close(self._master)
         os.close(self._slave)
 
@@ -102,7 +129,13 @@ class Tcp:
         address = self._listener.getsockname()
         self.name = f"socket://{address[0]}:{address[1]}"
         self._client: socket.socket | None = None
+        self._sent_away: deque[socket.socket] = deque()
         self._held = b""
+
+    @property
+    def held(self) -> bool:
+        """Bytes that the client has not made room for yet."""
+        return bool(self._held)
 
     def exchange(self, box: EmulatedBox, wait_s: float) -> None:
         """Take a client, move its bytes, notice that it has gone."""
@@ -121,13 +154,20 @@ class Tcp:
         with contextlib.suppress(OSError):
             new, _ = self._listener.accept()
             if self._client is not None:
-                new.sendall(_BUSY_LINE)
-                new.close()
+                self._send_away(new)
                 return
             new.setblocking(False)
             new.setsockopt(socket.IPPROTO_TCP, socket.TCP_NODELAY, 1)
             self._client = new
             box.link.attach(True)
+
+    def _send_away(self, new: socket.socket) -> None:
+        """Tell it, and leave the socket open for a while: closed with its bytes unread it would lose the words too."""
+        self._sent_away.append(new)
+        if len(self._sent_away) > _GIVEN_UP:
+            self._sent_away.popleft().close()
+        new.sendall(_busy_line())
+        new.shutdown(socket.SHUT_WR)
 
     def _move(self, client: socket.socket, box: EmulatedBox, readable: bool, writable: bool) -> None:
         try:
@@ -148,7 +188,7 @@ class Tcp:
 
     def close(self) -> None:
         """Let the client go, give the port back."""
-        for one in (self._client, self._listener):
+        for one in (self._client, *self._sent_away, self._listener):
             if one is not None:
                 one.close()
 
@@ -173,7 +213,7 @@ def serve(
             while box.now_s < due_s and periods < 20:
                 box.tick()
                 periods += 1
-                if len(box.link.out) >= 128:
+                if len(box.link.out) >= 128 and not outlet.held:
                     break
             ahead_s = (box.now_s + _PERIOD_S - due_s) / speed
             outlet.exchange(box, min(ahead_s, 0.05) if box.now_s >= due_s else 0.0)
@@ -181,5 +221,7 @@ def serve(
         pass
     finally:
         outlet.close()
-        on_end()
-        box.stop()
+        try:
+            on_end()
+        finally:
+            box.stop()

@@ -25,7 +25,9 @@ except ImportError:  # Windows: two programs on one file are not told apart ther
 
 _SCHEMA = 1
 _PERIODS_PER_S = 200
-_GOES_ON_S = 60  # the longest way from a host's silence to clean rest: 2 s, bleeding, 16 s of proof, and to spare
+_GOES_ON_S = (
+    60  # the longest way from a host's silence to clean rest: 2 s, bleeding, 16 s of proof, and to spare
+)
 _STEPS = 20
 
 
@@ -112,7 +114,9 @@ def _locked(name: Path, path: Path) -> tuple[Path, int] | None:
         try:
             descriptor = os.open(name, os.O_RDWR | os.O_CREAT, 0o666)
         except OSError as error:
-            raise UsageError(f"{path} cannot be written: {error.strerror}.", remedy="Choose a file in a folder of yours.") from None
+            raise UsageError(
+                f"{path} cannot be written: {error.strerror}.", remedy="Choose a file in a folder of yours."
+            ) from None
         if fcntl is None:
             return name, descriptor
         try:
@@ -120,7 +124,8 @@ def _locked(name: Path, path: Path) -> tuple[Path, int] | None:
         except OSError:
             os.close(descriptor)
             raise NoBoxError(
-                f"The emulated box in {path} is in use by another program.", remedy="Wait until that is over, or name another file."
+                f"The emulated box in {path} is in use by another program.",
+                remedy="Wait until that is over, or name another file.",
             ) from None
         if _is_still(name, descriptor):
             return name, descriptor

@@ -1,7 +1,8 @@
 """pyserial's `emu://`: an emulated box in this process, in virtual time and without threads.
 
-Time passes only while the host reads (or asks what is waiting), one control period at a time, until what was asked for is there
-or the timeout is over in virtual seconds. `clock()` is the link's own clock. A read without a timeout is bounded, for a box that
+Time passes only while the host waits here, one control period at a time, until what was asked for is there or the timeout is over
+in virtual seconds. `clock()` is the link's own clock, `wait()` lets time pass without reading. Even a call that may not wait lets
+one period pass when nothing is there, or a host that polls would stand still. A read without a timeout is bounded, for a box that
 never says anything would otherwise hold the host for ever.
 """
 
@@ -9,7 +10,7 @@ from __future__ import annotations
 
 from typing import Any
 
-from serial.serialutil import PortNotOpenError, SerialBase, SerialException
+from serial.serialutil import PortNotOpenError, SerialBase, SerialException, SerialTimeoutException
 
 from dwellbench.emulator.emulated_box import EmulatedBox
 from dwellbench.emulator.opening import Opening
@@ -17,26 +18,29 @@ from dwellbench.errors import UsageError
 
 # Longer than anything the box does without saying a word (the longest charge of its largest part is 20 minutes).
 ENDLESS_S = 3600.0
+_BOOTLOADER_BAUD = 1200
 
 
 class Serial(SerialBase):
     """Behaves as a serial port does; what a test may look behind is `box`."""
 
     box: EmulatedBox
-    _open_as: Opening
-    # set by the base class, which the published stubs do not say
-    _port: str | None
-    _timeout: float | None
+    _opening: Opening
+    _timeout: float | None  # of the base; its type stubs leave these out
+    _write_timeout: float | None
     _baudrate: int
+    _cancelled = False
 
     def open(self) -> None:
-        """Switch the emulated box on. SerialException if it is open already."""
-        if self._port is None:
+        """Switch the emulated box on. SerialException if it is open already, DwellbenchError for a box that cannot be."""
+        url = self.port
+        if url is None:
             raise SerialException("Port must be configured before it can be used.")
         if self.is_open:
             raise SerialException("Port is already open.")
-        self._open_as = Opening.from_url(self._port)
-        self.box = self._open_as.make()
+        self._reconfigure_port()
+        self._opening = Opening.from_url(url)
+        self.box = self._opening.make()
         self.box.link.attach(True)
         self._cancelled = False
         self.is_open = True
@@ -46,9 +50,8 @@ class Serial(SerialBase):
         if not self.is_open:
             return
         self.is_open = False
-        self.box.link.attach(False)
         try:
-            self._open_as.leave(self.box)
+            self._opening.leave(self.box)
         finally:
             self.box.stop()
 
@@ -59,14 +62,19 @@ class Serial(SerialBase):
     # -- time
 
     def clock(self) -> float:
-        """Virtual seconds."""
+        """Virtual seconds since the box was switched on first."""
         return self.box.now_s
 
     def wait(self, seconds: float) -> None:
         """Let virtual time pass."""
         self._need()
-        until = self.box.now_s + seconds
-        while self.box.now_s < until:
+        self._pass_until(self._deadline(seconds))
+
+    def _deadline(self, seconds: float | None) -> int:
+        return self.box.world.now_us + round((ENDLESS_S if seconds is None else seconds) * 1e6)
+
+    def _pass_until(self, until_us: int) -> None:
+        while self.box.world.now_us < until_us and self.is_open:
             self.box.tick()
 
     def _need(self) -> None:
@@ -76,27 +84,36 @@ class Serial(SerialBase):
     # -- bytes
 
     def read(self, size: int = 1) -> bytes:
-        """Return up to `size` bytes, waiting in virtual time."""
+        """Return up to `size` bytes, waiting in virtual time; fewer when the time is over, or another thread cancels or closes."""
         self._need()
-        box, out = self.box, self.box.link.out
-        limit = ENDLESS_S if self._timeout is None else self._timeout
-        until_us = box.world.now_us + round(limit * 1e6)
+        box = self.box
+        until_us = self._deadline(self._timeout)
         self._cancelled = False
         taken = bytearray(box.link.pull(size))
-        first = True
-        while len(taken) < size and (first or box.world.now_us < until_us) and not self._cancelled:
-            first = False  # even a read that may not wait lets one period pass, or a polling host would stand still
+        while len(taken) < size and not self._cancelled:
             box.tick()
-            self._need()
-            if out:
-                taken += box.link.pull(size - len(taken))
+            if not self.is_open:
+                break
+            taken += box.link.pull(size - len(taken))
+            if box.world.now_us >= until_us:
+                break
         return bytes(taken)
 
     def write(self, data: Any) -> int:
-        """Hand bytes to the box; time does not pass."""
+        """Hand bytes to the box. Time passes only when they are more than a driver would hold; SerialTimeoutException when too much."""
         self._need()
         sent = bytes(data)
-        self.box.link.push(sent)
+        until_us = self._deadline(self._write_timeout)
+        link, at = self.box.link, 0
+        while at < len(sent):
+            room = link.host_room()
+            if room > 0:
+                link.push(sent[at : at + room])
+                at += room
+            elif self.box.world.now_us >= until_us or not self.is_open:
+                raise SerialTimeoutException("Write timeout")
+            else:
+                self.box.tick()
         return len(sent)
 
     @property
@@ -118,11 +135,14 @@ class Serial(SerialBase):
         self._cancelled = True
 
     def cancel_write(self) -> None:
-        """Nothing ever waits in a write."""
+        """A write waits only while the box does not read, and no longer than its timeout."""
 
     def flush(self) -> None:
-        """Nothing is held back."""
+        """Wait until the box has all that was written, as draining a port does, but not for ever."""
         self._need()
+        until_us = self._deadline(self._write_timeout)
+        while self.box.link.waiting and self.box.world.now_us < until_us:
+            self.box.tick()
 
     def reset_input_buffer(self) -> None:
         """Drop what has come and was not read."""
@@ -137,7 +157,7 @@ class Serial(SerialBase):
     # -- what a port has and this one has no use for
 
     def _reconfigure_port(self, force_update: bool = False) -> None:
-        if self._baudrate == 1200:
+        if self._baudrate == _BOOTLOADER_BAUD:
             raise UsageError("1200 baud would send a board into its bootloader.", remedy="Use another speed.")
 
     def _update_break_state(self) -> None:
@@ -151,16 +171,20 @@ class Serial(SerialBase):
 
     @property
     def cts(self) -> bool:
+        """Clear to send, always."""
         return True
 
     @property
     def dsr(self) -> bool:
+        """The box is there."""
         return True
 
     @property
     def ri(self) -> bool:
+        """Nobody rings."""
         return False
 
     @property
     def cd(self) -> bool:
+        """The box is there."""
         return True
