@@ -29,7 +29,7 @@ def main():
     with open("reference_box.json") as file:
         controller = Controller(board, json.load(file), board.build())
     told.append(("objects", used() - before))
-    try:
+    try:  # noqa: SIM105 - no contextlib here
         loop(controller, board)
     except SystemExit:
         pass

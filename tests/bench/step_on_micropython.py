@@ -31,7 +31,7 @@ class Still(Board):
 
     def convert(self, unit, channel, full_scale):
         code = 0
-        if channel == CH_REFERENCE_A or channel == CH_REFERENCE_B:
+        if channel in (CH_REFERENCE_A, CH_REFERENCE_B):
             code = REFERENCE
         elif channel == CH_THERMISTOR:
             code = WARM
@@ -105,4 +105,4 @@ step_us(controller, board)
 assert controller.course.state == REST, controller.course.state
 step = min(step_us(controller, board) for _ in range(3))
 empty = min(empty_us() for _ in range(3))
-print("a step at rest takes %d empty loop turns under MicroPython" % round(step / empty))
+print("a step at rest takes", round(step / empty), "empty loop turns under MicroPython")

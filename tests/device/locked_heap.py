@@ -49,7 +49,9 @@ def loop():
             finally:
                 micropython.heap_unlock()
             if course.state == LOCKOUT:
-                raise AssertionError("the heap was touched in " + STATES[state] + ": " + str(ring.note(ring.n - 1)))
+                raise AssertionError(
+                    "the heap was touched in " + STATES[state] + ": " + str(ring.note(ring.n - 1))
+                )
             locked[state] += 1
             rows[state] += ring.n - before
         else:

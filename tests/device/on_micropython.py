@@ -51,7 +51,9 @@ def plain(value):
 
 def check_native():
     """Machine code here, with words of 64 bits; and the library's way, which an interpreter without machine code takes."""
-    assert compat.hex_crc is native.hex_crc, "this interpreter makes machine code, so it must be what the wire uses"
+    assert compat.hex_crc is native.hex_crc, (
+        "this interpreter makes machine code, so it must be what the wire uses"
+    )
     for made in (native, library):
         for data, expected in CRC:
             out = bytearray(10)
@@ -107,7 +109,8 @@ def check_rows():
                 line.send(sink, 32)
             body = bytes(sink.data)[:-19]
             assert bytes(sink.data)[-19:] == b',"crc":"%08x"}\n' % binascii.crc32(body), sink.data
-            assert json.loads(body + b"}")["params"] == {"n": 0, "boot": 7, "rows": [[0] + list(row)]}, sink.data  # noqa: RUF005 - no stars in displays here
+            numbers = json.loads(body + b"}")["params"].pop("rows")[0]
+            assert numbers[0] == 0 and numbers[1:] == list(row), sink.data
     return len(ROWS)
 
 

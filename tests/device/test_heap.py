@@ -50,7 +50,10 @@ def test_dwell_and_rest_touch_no_heap() -> None:
     finally:
         box.stop()
     ends = [notice.params["end"] for notice in notices if notice.method == "done"]
-    counts = {name: (int(periods), int(rows)) for name, periods, rows in (line.split() for line in said.splitlines())}
+    counts = {
+        name: (int(periods), int(rows))
+        for name, periods, rows in (line.split() for line in said.splitlines())
+    }
     assert ends == ["complete"], said
     assert counts["rest"][0] > 1000
     assert counts["dwell"][0] > 800, "of 1200; what is left has the host's signs of life in it"
@@ -71,5 +74,7 @@ except MemoryError:
 
 def test_the_lock_would_show_an_allocation() -> None:
     """The proof itself can fail: the same lock around something that allocates."""
-    done = subprocess.run([interpreter(), "-c", TELLS], capture_output=True, text=True, timeout=20, check=False)
+    done = subprocess.run(
+        [interpreter(), "-c", TELLS], capture_output=True, text=True, timeout=20, check=False
+    )
     assert done.stdout == "told\n"

@@ -47,7 +47,10 @@ def box() -> Box:
 
 def write(pages: Pages, of: str, whole: str, size: int = 100) -> list[dict[str, Any]]:
     cut = [whole[at : at + size] for at in range(0, len(whole), size)] or [""]
-    return [dict(pages.answer({"of": of, "page": k, "pages": len(cut), "text": part})) for k, part in enumerate(cut)]
+    return [
+        dict(pages.answer({"of": of, "page": k, "pages": len(cut), "text": part}))
+        for k, part in enumerate(cut)
+    ]
 
 
 def read(pages: Pages, of: str) -> str:
@@ -73,7 +76,9 @@ def test_settings_read_back_as_written(box: Box, size: int) -> None:
 
 def test_a_calibration_of_any_shape_reads_back(box: Box) -> None:
     pages = Pages(box)
-    whole = json.dumps({"volts": [{"range_mv": k, "per_code": k / 7} for k in range(30)]}, separators=(",", ":"))
+    whole = json.dumps(
+        {"volts": [{"range_mv": k, "per_code": k / 7} for k in range(30)]}, separators=(",", ":")
+    )
     write(pages, "calibration", whole)
     assert read(pages, "calibration") == whole
 
@@ -122,7 +127,9 @@ def test_written_only_with_the_lid_open(box: Box) -> None:
     ],
     ids=lambda value: value if isinstance(value, str) else "",
 )
-def test_pages_out_of_order_are_refused_and_nothing_is_stored(box: Box, pages_sent: list[dict[str, Any]], why: str) -> None:
+def test_pages_out_of_order_are_refused_and_nothing_is_stored(
+    box: Box, pages_sent: list[dict[str, Any]], why: str
+) -> None:
     pages = Pages(box)
     for sent in pages_sent[:-1]:
         pages.answer({"text": "{", **sent})

@@ -105,7 +105,9 @@ def test_without_a_checksum_only_asking_and_stopping(method: str) -> None:
     assert (judged(line).error == 0) == (method in ("hello", "status", "abort")) == (method in BY_HAND)
 
 
-@pytest.mark.parametrize("line", [asked("run", _RUN), asked("finish"), asked("abort"), asked("maintenance", id_='"x"')])
+@pytest.mark.parametrize(
+    "line", [asked("run", _RUN), asked("finish"), asked("abort"), asked("maintenance", id_='"x"')]
+)
 def test_a_sealed_line_with_any_bit_changed_is_not_believed(line: bytes) -> None:
     """A damaged name of the checksum's member leaves a line without one: what may be typed by hand still may, nothing else."""
     for bit in range(8 * len(line)):

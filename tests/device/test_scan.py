@@ -65,7 +65,9 @@ def _refuse(text: str) -> Any:
 def by_python(text: bytes) -> Any:
     """What the RFC makes of it, with this wire's stated refusals."""
     try:
-        value = json.loads(text.decode("utf-8"), parse_int=_whole, parse_float=lambda text: FRACTION, parse_constant=_refuse)
+        value = json.loads(
+            text.decode("utf-8"), parse_int=_whole, parse_float=lambda text: FRACTION, parse_constant=_refuse
+        )
     except (ValueError, RecursionError):
         return BAD
     if depth(value) > DEPTH or lone_surrogate(value):
@@ -124,7 +126,9 @@ _values = st.recursive(
 
 
 @given(_values, st.booleans(), st.sampled_from([(",", ":"), (" , ", " : "), (",\t", ":\r\n")]))
-def test_whatever_python_writes_is_read_alike(value: Any, ascii_only: bool, separators: tuple[str, str]) -> None:
+def test_whatever_python_writes_is_read_alike(
+    value: Any, ascii_only: bool, separators: tuple[str, str]
+) -> None:
     text = json.dumps(value, ensure_ascii=ascii_only, separators=separators)
     data = text.encode("utf-8", "surrogatepass")
     if len(data) > 500:
@@ -134,7 +138,18 @@ def test_whatever_python_writes_is_read_alike(value: Any, ascii_only: bool, sepa
 
 _PIECES = [
     *(bytes([byte]) for byte in b'{}[]:,"\\ 0123456789-+.eEtrufalsn\x00\x1f\x7f\t'),
-    *(b"true", b"null", b'"a"', b'"a":', b"\\u", b"\\ud83d", b"\\ude00", b"\xc3\xa9", b"\xed\xa0\x80", b"\xf4\x8f\xbf\xbf"),
+    *(
+        b"true",
+        b"null",
+        b'"a"',
+        b'"a":',
+        b"\\u",
+        b"\\ud83d",
+        b"\\ude00",
+        b"\xc3\xa9",
+        b"\xed\xa0\x80",
+        b"\xf4\x8f\xbf\xbf",
+    ),
 ]
 
 

@@ -60,7 +60,10 @@ def plan_watched(monkeypatch: pytest.MonkeyPatch) -> None:
 @pytest.mark.usefixtures("plan_watched")
 @pytest.mark.parametrize(
     ("volts_mv", "part"),
-    [(650_000, "capacitance_F = 47e-9\nleakage_ohm = 3e10"), (400_000, "capacitance_F = 4e-6\nleakage_ohm = 3e6")],
+    [
+        (650_000, "capacitance_F = 47e-9\nleakage_ohm = 3e10"),
+        (400_000, "capacitance_F = 4e-6\nleakage_ohm = 3e6"),
+    ],
     ids=["highest voltage", "a leaky part on the low shunt"],
 )
 def test_dwell_and_rest_stay_within_31_bits(volts_mv: int, part: str) -> None:
@@ -71,7 +74,14 @@ def test_dwell_and_rest_stay_within_31_bits(volts_mv: int, part: str) -> None:
     seen = {DWELL: 0, REST: 0}
     outside: dict[tuple[str, int], int] = {}
     ends: list[str] = []
-    plan = {"run_key": "k", "volts_mv": volts_mv, "dwell_ms": 4000, "ceiling_ua": 2000, "nudge": False, "bleed_ms": 0}
+    plan = {
+        "run_key": "k",
+        "volts_mv": volts_mv,
+        "dwell_ms": 4000,
+        "ceiling_ua": 2000,
+        "nudge": False,
+        "bleed_ms": 0,
+    }
     box.tick()
     for period in range(16_000):
         if period == 10:
@@ -86,7 +96,11 @@ def test_dwell_and_rest_stay_within_31_bits(volts_mv: int, part: str) -> None:
         if state in seen and state == box.controller.course.state:
             seen[state] += 1
             outside.update(small.beyond)
-        ends += [e.params["end"] for e in client.receive(box.link.pull()) if isinstance(e, Notice) and e.method == "done"]
+        ends += [
+            e.params["end"]
+            for e in client.receive(box.link.pull())
+            if isinstance(e, Notice) and e.method == "done"
+        ]
         if ends and seen[REST] > 400 and state == REST:
             break
     assert ends == ["complete"]
