@@ -2,17 +2,18 @@
 
 from __future__ import annotations
 
-from dataclasses import fields
+from dataclasses import fields, replace
 from pathlib import Path
 
 import numpy as np
 import pytest
 
 from dwellbench.errors import TraceError
-from dwellbench.judge import analyse
+from dwellbench.judge import analyse, judge
 from dwellbench.measure.csv_read import parse_csv, read_csv
 from dwellbench.measure.csv_write import csv_text, write_csv
 from dwellbench.measure.trace import Trace
+from dwellbench.part import Part
 
 DATA = Path(__file__).parent / "data"
 HEAD = "t_s,stage,shunt_ohm,v_part_V,i_shunt_A,v_supply_V"
@@ -146,3 +147,32 @@ def test_a_word_with_a_line_break_does_not_break_the_header() -> None:
         **{**{f.name: getattr(trace, f.name) for f in fields(Trace)}, "header": {"note": "two\nlines"}}
     )
     assert parse_csv(csv_text(odd)).text("note") == "two lines"
+
+
+BOXED = {
+    "run": 7,
+    "run_key": "00ab12cd34ef5678",
+    "box": "0011223344556677",
+    "firmware": "0.1.0",
+    "simulated": True,
+    "calibration": "12345678",
+    "end": "short",
+    "short_mv": 187,
+    "short_na": 241000,
+    "residual_mv": 12000,
+    "look_pf": 47000,
+    "humidity_percent": 41.0,
+}
+
+
+@pytest.mark.parametrize("end", ["short", "complete", "reversed", "residual", "value_off"])
+def test_what_a_box_said_of_its_run_reads_back(end: str) -> None:
+    """Identifiers keep their zeros, numbers stay numbers, and the outcome stays the same."""
+    trace = read_csv(DATA / "film_47n.csv")
+    boxed = replace(trace, header={**trace.header, **BOXED, "end": end})
+    again = parse_csv(csv_text(boxed))
+    assert again.text("box") == "0011223344556677"
+    assert again.number("short_na") == 241000.0
+    marked = Part("47n 630V film", capacitance_F=4.7e-8, rated_V=630.0, rated_kind="dc", dielectric="film")
+    assert judge(again, marked).as_json() == judge(boxed, marked).as_json()
+    assert judge(again, marked).simulated is True

@@ -80,7 +80,7 @@ def _times(case: Case) -> list[str]:
             "A second test soon after reads less absorption; leave the part shorted five times as long as it was held."
         )
     recovery = case.estimates.recovery_percent
-    if recovery is not None:
+    if recovery is not None and recovery.value is not None:
         told.append(
             "Recovery belongs to this run's own times of charge, bleed and watching; compare only what was taken alike."
         )

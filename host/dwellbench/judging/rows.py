@@ -73,8 +73,9 @@ def place_rows(case: Case, place: Place, place_V: float | None) -> list[Row]:
     return sorted([row for row in rows if row is not None], key=_hardest)
 
 
-def _hardest(row: Row) -> tuple[float, bool]:
-    return (2.0 if row.p is None else row.p, not row.may_reject)
+def _hardest(row: Row) -> tuple[float, bool, bool]:
+    """Least probable first; of equals, what was measured before what is only written on the part."""
+    return (2.0 if row.p is None else row.p, row.result.quantity == "rated_V", not row.may_reject)
 
 
 def _limit_row(case: Case, limit: Limit, rules: bool) -> Row:

@@ -79,7 +79,7 @@ def _insulation(
 _A1 = "general radial series: the greater of 0.01 C V and 3 uA after 2 min; four makers' sheets as quoted on itecnotes.com"
 _JAN = "JAN-C-62: k C + 0.3 mA, as quoted in amradio mailing list, message 21215"
 _SHELF = "twice the new limit after the shelf test of IEC 60384-4, as stated in data sheets (Vishay 28375, 28327, 28340)"
-_TENTH = "a tenth of the typical figure of the table of dielectrics on wima.de; the tenth is common practice, no source"
+_TENTH = "a tenth of the typical figure of the table of dielectrics on wima.de"
 
 _ELECTROLYTIC = (
     _current("al_new", "greater", 0.01, 3.0, _NEW, 120.0, _A1, DATA_SHEET, rules=True),

@@ -29,8 +29,12 @@ HEADER_NUMBERS = (
     "u_gain_i",
     "u_offset_A",
     "u_fixture_rel",
+    "asked_V",
     "dwell_asked_s",
     "look_pf",
+    "short_mv",
+    "short_na",
+    "residual_mv",
 )
 """Header keys that must be numbers when they are there."""
 
