@@ -12,11 +12,8 @@ except ImportError:
 # The inner loops of the wire: in machine code where the interpreter makes it (the board does), else through its library.
 try:
     from .native import hex_crc, put_bytes, put_number, put_row
-except (
-    ImportError,
-    SyntaxError,
-    ValueError,
-):  # no MicroPython; no machine code here; compiled for another processor
+except (ImportError, SyntaxError, ValueError):
+    # no MicroPython; no machine code for this processor; compiled for another one
     from .plain import hex_crc, put_bytes, put_number, put_row  # noqa: F401
 
 

@@ -4,8 +4,6 @@ Order, first failure answers: too long, checksum wrong, not JSON, not a request,
 needed, parameters. A checksum that is present and wrong is never looked behind.
 """
 
-import binascii
-
 from .codes import (
     E_BAD_CRC,
     E_CRC_REQUIRED,
@@ -14,11 +12,12 @@ from .codes import (
     E_METHOD_NOT_FOUND,
     E_PARSE_ERROR,
 )
-from .compat import const
+from .compat import const, hex_crc
 
 _CRC_LENGTH = const(18)  # ,"crc":"xxxxxxxx"}
 _CRC_HEAD = b',"crc":"'
-_HEX = b"0123456789abcdef"
+_CRC_END = b'"}'
+_digits = bytearray(8)
 _ID_MOST = const(0x3FFFFFFF)
 _ID_LETTERS = const(16)
 _MS_MOST = const(0x3FFFFFFF)
@@ -76,10 +75,10 @@ class Request:
 def crc_of(buffer, length):
     """Say what the checksum at the end of a line is: True right, False wrong, None not there."""
     start = length - _CRC_LENGTH
-    if start < 1 or bytes(buffer[start : start + 8]) != _CRC_HEAD or bytes(buffer[length - 2 : length]) != b'"}':
+    if start < 1 or buffer[start : start + 8] != _CRC_HEAD or buffer[length - 2 : length] != _CRC_END:
         return None
-    found = bytes(buffer[start + 8 : length - 2])
-    return found == b"%08x" % (binascii.crc32(bytes(buffer[:start])) & 0xFFFFFFFF)
+    hex_crc(buffer, start, _digits, 0)
+    return buffer[start + 8 : length - 2] == _digits
 
 
 def judge(buffer, length, scanner):

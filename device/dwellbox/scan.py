@@ -14,12 +14,12 @@ _KEY = const(2)
 _COLON = const(3)
 _AFTER = const(4)
 _FIRST_ITEM = const(5)
-_STRING = const(6)
-_ESCAPE = const(7)
-_HEX = const(8)
-_NUMBER = const(9)
-_WORD = const(10)
-_END = const(11)
+_END = const(6)  # up to here between the tokens, where white space may stand
+_STRING = const(7)
+_ESCAPE = const(8)
+_HEX = const(9)
+_NUMBER = const(10)
+_WORD = const(11)
 _BAD = const(12)
 _CONTINUED = const(13)  # within a UTF-8 sequence
 _HALF = const(14)  # after the first half of a surrogate pair
@@ -28,13 +28,14 @@ _DEPTH = const(6)
 _DIGITS = const(15)
 _TEXT = const(512)  # longer than a line can be
 
+_SPACE = b" \t\r\n"
 # Bytes that are themselves in a string, most of what comes: ASCII but for controls, quotation mark and backslash.
 _PLAIN = bytes([32 <= byte < 128 and byte != 34 and byte != 92 for byte in range(256)])
 
 _WORDS = {116: (b"true", True), 102: (b"false", False), 110: (b"null", None)}
 _ESCAPES = {34: 34, 92: 92, 47: 47, 98: 8, 102: 12, 110: 10, 114: 13, 116: 9}
 
-# What may follow in a number: its grammar as a table of (state, class of byte) -> state; classes - 0 1-9 . e +
+# A number's grammar (RFC 8259, section 6): from what has come, by the kind of the next byte, to what has come then; 0: not allowed.
 _ZERO = const(1)
 _INT = const(2)
 _POINT = const(3)
@@ -42,29 +43,23 @@ _FRACTION = const(4)
 _EXPONENT = const(5)
 _SIGN = const(6)
 _POWER = const(7)
-_GRAMMAR = {
-    (0, 48): _ZERO,
-    (0, 49): _INT,
-    (_INT, 48): _INT,
-    (_INT, 49): _INT,
-    (_ZERO, 46): _POINT,
-    (_INT, 46): _POINT,
-    (_POINT, 48): _FRACTION,
-    (_POINT, 49): _FRACTION,
-    (_FRACTION, 48): _FRACTION,
-    (_FRACTION, 49): _FRACTION,
-    (_ZERO, 101): _EXPONENT,
-    (_INT, 101): _EXPONENT,
-    (_FRACTION, 101): _EXPONENT,
-    (_EXPONENT, 43): _SIGN,
-    (_EXPONENT, 45): _SIGN,
-    (_EXPONENT, 48): _POWER,
-    (_EXPONENT, 49): _POWER,
-    (_SIGN, 48): _POWER,
-    (_SIGN, 49): _POWER,
-    (_POWER, 48): _POWER,
-    (_POWER, 49): _POWER,
-}
+_KINDS = const(7)
+_NEXT = (
+    # other, 0, 1 to 9, point, e, plus, minus
+    (0, _ZERO, _INT, 0, 0, 0, 0),  # nothing, or the minus before it
+    (0, 0, 0, _POINT, _EXPONENT, 0, 0),  # _ZERO
+    (0, _INT, _INT, _POINT, _EXPONENT, 0, 0),  # _INT
+    (0, _FRACTION, _FRACTION, 0, 0, 0, 0),  # _POINT
+    (0, _FRACTION, _FRACTION, 0, _EXPONENT, 0, 0),  # _FRACTION
+    (0, _POWER, _POWER, 0, 0, _SIGN, _SIGN),  # _EXPONENT
+    (0, _POWER, _POWER, 0, 0, 0, 0),  # _SIGN
+    (0, _POWER, _POWER, 0, 0, 0, 0),  # _POWER
+)
+_GRAMMAR = bytes([after for row in _NEXT for after in row])
+_KIND = bytearray(256)
+for _kind, _bytes in enumerate((b"", b"0", b"123456789", b".", b"eE", b"+", b"-")):
+    for _byte in _bytes:
+        _KIND[_byte] = _kind
 
 
 class NotWhole:
@@ -122,8 +117,11 @@ class Scanner:
                 self._length = length + 1
             else:
                 self._in_string(byte)
-        elif state == _BAD:
-            return
+        elif state <= _END:
+            if byte > 32:
+                self._between(byte, state)
+            elif byte not in _SPACE:
+                self._state = _BAD
         elif state == _NUMBER:
             self._in_number(byte)
         elif state == _WORD:
@@ -136,20 +134,16 @@ class Scanner:
             self._in_sequence(byte)
         elif state == _HALF:
             self._state = _ESCAPE if byte == 92 else _BAD
-        elif byte == 32 or byte == 9 or byte == 13 or byte == 10:
-            return
-        else:
-            self._between(byte, state)
 
     # ---- structure
 
     def _between(self, byte, state):
-        if state == _VALUE or (state == _FIRST_ITEM and byte != 93):
-            self._begin_value(byte)
-        elif state == _COLON:
+        if state == _COLON:
             self._state = _VALUE if byte == 58 else _BAD
         elif state == _AFTER:
             self._after(byte)
+        elif state == _VALUE or (state == _FIRST_ITEM and byte != 93):
+            self._begin_value(byte)
         elif state == _FIRST_ITEM or (state == _FIRST_KEY and byte == 125):
             self._close()
         elif state in (_KEY, _FIRST_KEY) and byte == 34:
@@ -231,24 +225,21 @@ class Scanner:
             self._in_number(byte)
 
     def _in_number(self, byte):
-        kind = byte
-        if 49 <= byte <= 57:
-            kind = 49
-        elif byte == 69:
-            kind = 101
-        after = _GRAMMAR.get((self._grammar, kind), 0)
+        kind = _KIND[byte]
+        after = _GRAMMAR[self._grammar * _KINDS + kind]
         if after:
             self._grammar = after
-            if after <= _INT and self._digits < _DIGITS:
-                self._number = self._number * 10 + byte - 48
-            self._digits += 1
-            return
-        if byte in b"0123456789+-.eE":
+            if after <= _INT:
+                digits = self._digits
+                self._digits = digits + 1
+                if digits < _DIGITS:
+                    self._number = self._number * 10 + byte - 48
+        elif kind:
             self._state = _BAD
-            return
-        self._end_number()
-        if self._state != _BAD:
-            self.feed(byte)
+        else:
+            self._end_number()
+            if self._state != _BAD:
+                self.feed(byte)
 
     def _end_number(self):
         grammar = self._grammar
