@@ -16,7 +16,9 @@ from ..stage import GO, NEXT, ends, faults
 
 _FINE_BELOW_MV = const(230000)  # the divider's fine range reads to 256 V
 _ARM_MS = const(30)  # relays made before the supply moves
-_RAMP_REST_MS = const(200)  # after the ramp: the charge path's own lag, five time constants at most 100 ms each
+_RAMP_REST_MS = const(
+    200
+)  # after the ramp: the charge path's own lag, five time constants at most 100 ms each
 _NO_RISE_LEAST_MS = const(400)
 _CLIPS = const(2)
 

@@ -5,15 +5,18 @@ stores more than 45 uC the supply is lowered a few volts, and the shunt must see
 leaves only stray capacitance: the node follows the supply at once and the shunt sees nothing.
 """
 
-from ..board import FINE
+from ..board import FINE, WIDE
 from ..codes import FAULT_CHARGE_LEFT
 from ..compat import const, ticks_diff
+from ..shunts import LOW_FINE
 from ..stage import GO, NEXT, faults
 
 _CALM_MS = const(300)  # on the low shunt before the step: one whole window of the current that flows anyway
 _LEAST_MS = const(300)
 _MOST_MS = const(3000)
-_SHARE = const(50)  # per cent of the charge expected that must be seen; absorption and leakage move it by far less
+_SHARE = const(
+    50
+)  # per cent of the charge expected that must be seen; absorption and leakage move it by far less
 
 
 class Nudge:
@@ -33,7 +36,10 @@ class Nudge:
         self._phase = 0
         self._pc = 0
         if wanted(bench):
-            bench.low(now, FINE)
+            front = bench.front
+            flowing = front.na(front.mean_code10) // 10
+            fine = flowing * 100 < bench.shunts.full_na[LOW_FINE] * 60
+            bench.low(now, FINE if fine else WIDE)
 
     def step(self, bench, now):
         """Nothing for small charges; otherwise rest, step, count."""
@@ -62,11 +68,12 @@ class Nudge:
 
     def _expected(self, bench):
         """Return the charge in picocoulombs: all of C dV for small parts, the charge path's current times the wait for
-        large ones, whichever is less."""
-        step = bench.ratings.nudge_mv
+        large ones, whichever is less. A leaky part's voltage follows the supply's step only in its own proportion."""
+        front = bench.front
+        step = bench.ratings.nudge_mv * (front.part_mv // 1000) // max(bench.supply.mv // 1000, 1)
         whole = bench.capacitance_nf * step * 9 // 10
-        path = step * 1000 // (bench.ratings.charge_ohm // 1000) * self._wait_ms * 6 // 10
-        return whole if whole < path else path
+        path = bench.ratings.nudge_mv * 1000 // (bench.ratings.charge_ohm // 1000) * self._wait_ms * 6 // 10
+        return min(whole, path)
 
 
 def wanted(bench):

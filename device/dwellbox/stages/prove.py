@@ -65,7 +65,9 @@ class Prove:
             self._good += 1
             if self._good < 2:
                 return GO
-            bench.proof.followed = True  # the divider has read, in this run, what the circuit made of a known voltage
+            bench.proof.followed = (
+                True  # the divider has read, in this run, what the circuit made of a known voltage
+            )
             return NEXT
         self._good = 0
         return faults(FAULT_WAY_DOWN) if gone > _PROVE_STALL_MS else GO
