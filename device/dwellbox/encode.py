@@ -10,6 +10,8 @@ from .ring import DONE, FAULT, LOG, SAMPLE, STATE
 
 LINE = const(512)  # bytes, the newline among them
 TAIL = const(19)  # ,"crc":"xxxxxxxx"} and the newline
+ASK_US = const(40)  # on the reference board: to ask it for room,
+BYTE_US = const(72)  # and to put a byte
 ROWS = const(3)  # of a line: at their longest (107 bytes each) they still fit
 
 _SAMPLES = b'{"jsonrpc":"2.0","method":"samples","params":{"n":'
@@ -114,24 +116,24 @@ class Line:
         self.busy = True
         self.open = False
 
-    def send(self, board, most):
-        """Put up to `most` bytes while the board has room; return how many. Allocates nothing."""
+    def send(self, board, us):
+        """Put bytes while the board has room, for about `us` microseconds; return how many. Allocates nothing."""
         source = self._source
+        length = self._length
         start = sent = self._sent
-        stop = sent + most
-        if stop > self._length:
-            stop = self._length
         room = 0
-        while sent < stop:
+        while us > 0 and sent < length:
             if room <= 0:
                 room = board.room()
                 if room <= 0:
                     break
+                us -= ASK_US
             board.put(source[sent])
             sent += 1
             room -= 1
+            us -= BYTE_US
         self._sent = sent
-        if sent == self._length:
+        if sent == length:
             self.busy = False
         return sent - start
 

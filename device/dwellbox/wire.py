@@ -22,9 +22,11 @@ from .ring import SAMPLE
 from .rpc import NO_ID, judge
 from .scan import Scanner
 
-_IN = const(5)  # bytes a period, 1.0 kB/s: a host's longest request is in within 0.5 s
-_OUT = const(10)  # 2.0 kB/s: ten samples a second need 1.0 to 1.7
-_OUT_BESIDE = const(2)  # while something else is done in the same period
+# A period takes 5 bytes in, 1.0 kB/s: a host's longest request is in within 0.5 s. Out go 9, 1.8 kB/s, or 14 where the port can
+# tell how much room it has; ten samples a second need 1.6, or 1.0 when they share lines.
+_IN = const(5)
+_OUT_US = const(1000)
+_OUT_BESIDE_US = const(150)  # while something else is done in the same period
 _LONGEST = const(511)  # bytes of a line before its newline
 _QUEUE = const(4)
 _PATIENCE_MS = const(200)
@@ -81,14 +83,14 @@ class Wire:
         line = self._line
         if self._work:
             self._go_on(now)
-            if line.busy and not line.open and line.send(self._board, _OUT_BESIDE):
+            if line.busy and not line.open and line.send(self._board, _OUT_BESIDE_US):
                 self._moved_ms = now
             return
         taken = self._take(now)
         if line.open:
             line.write_row(self._ring)
         elif line.busy:
-            if line.send(self._board, _OUT_BESIDE if taken else _OUT):
+            if line.send(self._board, _OUT_BESIDE_US if taken else _OUT_US):
                 self._moved_ms = now
         elif not self._next():
             self._moved_ms = now  # nothing waits for the host

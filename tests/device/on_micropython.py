@@ -106,7 +106,7 @@ def check_rows():
             sink = Sink(room)
             while line.busy:
                 sink.next_period()
-                line.send(sink, 32)
+                line.send(sink, 1000)
             body = bytes(sink.data)[:-19]
             assert bytes(sink.data)[-19:] == b',"crc":"%08x"}\n' % binascii.crc32(body), sink.data
             numbers = json.loads(body + b"}")["params"].pop("rows")[0]

@@ -12,7 +12,7 @@ from hypothesis import strategies as st
 from wire_vectors import ENCODE, ROWS
 
 from dwellbox.codes import DWELL, END_SHORT, FAULT_LID_OPEN, FAULT_NONE, ST_DWELL
-from dwellbox.encode import LINE, TAIL, Line, text
+from dwellbox.encode import BYTE_US, LINE, TAIL, Line, text
 from dwellbox.encode import ROWS as ROWS_A_LINE
 from dwellbox.ring import Ring
 
@@ -39,7 +39,7 @@ class Sink:
         self.data.append(byte)
 
 
-def sent(line: Line, rooms: list[int], most: int = 32, ring: Ring | None = None) -> bytes:
+def sent(line: Line, rooms: list[int], us: int = 1000, ring: Ring | None = None) -> bytes:
     """Write the rest of a line, then send it, as the wire does; every period is bounded."""
     sink = Sink(rooms)
     while line.open:
@@ -48,8 +48,11 @@ def sent(line: Line, rooms: list[int], most: int = 32, ring: Ring | None = None)
     while line.busy:
         sink.next_period()
         before = len(sink.data)
-        count = line.send(sink, most)
-        assert count == len(sink.data) - before <= most
+        room = sink.left
+        count = line.send(sink, us)
+        assert count == len(sink.data) - before
+        assert count <= -(-us // BYTE_US), "bounded work a period"
+        assert count > 0 or room == 0
         assert sink.period < 2000
     return bytes(sink.data)
 

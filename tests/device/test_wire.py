@@ -16,7 +16,7 @@ from dwellbox.ring import Ring
 from dwellbox.wire import Refusal, Wire
 
 IN_A_PERIOD = 5
-OUT_A_PERIOD = 10
+OUT_A_PERIOD = 14
 
 
 class Handler:

@@ -161,9 +161,12 @@ def test_limits_are_the_firmwares() -> None:
         for name, value in re.findall(r"^(_?[A-Z_]+) = const\((0x[0-9A-F]+|\d+)\)", source, re.MULTILINE):
             found[f"{module}.{name}"] = int(value, 0)
     reference = json.loads((DEVICE / "reference_box.json").read_text(encoding="utf-8"))
+    byte_us, ask_us, out_us = found["encode.BYTE_US"], found["encode.ASK_US"], found["wire._OUT_US"]
+    least = -(-out_us // (byte_us + ask_us))  # bytes, asking for room before each
+    most = -(-(out_us - ask_us) // byte_us)  # asking once
     for phrase in (
         f"at most **{found['encode.LINE']} bytes**",
-        f"{found['wire._IN']} bytes in and {found['wire._OUT']} out a period of {reference['times']['period_ms']} ms",
+        f"{found['wire._IN']} bytes in and {least} to {most} out a period of {reference['times']['period_ms']} ms",
         f"not read for {found['wire._PATIENCE_MS']} ms",
         f"{found['wire._COUNT']} if left out",
         f"from 0 to {found['rpc._ID_MOST']} (2^30 - 1), or 1 to {found['rpc._ID_LETTERS']} printable",
