@@ -51,7 +51,14 @@ _SUPPLY = const(15)
 _PUMP = const(16)
 _ADDRESS_A = const(0x48)  # ADDR to ground
 _ADDRESS_B = const(0x49)  # ADDR to VDD
-_AIN = (0, 1, 2, 3, 0, 1)  # converter input by channel code: part, supply, thermistor, reference a | shunt, reference b
+_AIN = (
+    0,
+    1,
+    2,
+    3,
+    0,
+    1,
+)  # converter input by channel code: part, supply, thermistor, reference a | shunt, reference b
 _PERIOD_MS = const(5)
 _WATCHDOG_MS = const(2000)
 _SCRATCH = const(0x4005800C)  # watchdog scratch register 0: survives a reset, not a power cut

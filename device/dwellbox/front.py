@@ -10,7 +10,7 @@ Nothing here allocates once the object is made; readings are whole numbers (mV, 
 keeps the raw codes for the host. The scales here are nominal: a calibration never reaches the firmware.
 """
 
-from .board import FINE, NO_CODE, WIDE
+from .board import NO_CODE, WIDE
 from .codes import (
     CH_PART,
     CH_REFERENCE_A,

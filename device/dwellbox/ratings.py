@@ -47,7 +47,9 @@ class Ratings:
         self.charge_ohm = paths["charge_ohm"]
         self.bleed_ohm = paths["bleed_ohm"][0]
         self.shunts_ohm = tuple(paths["shunts_ohm"])
-        self.divider_ratio = (paths["divider_top_ohm"] + paths["divider_bottom_ohm"]) // paths["divider_bottom_ohm"]
+        self.divider_ratio = (paths["divider_top_ohm"] + paths["divider_bottom_ohm"]) // paths[
+            "divider_bottom_ohm"
+        ]
         self.divider_kohm = (paths["divider_top_ohm"] + paths["divider_bottom_ohm"]) // 1000
         self.ranges_mv = tuple(reference["converter"]["ranges_mv"])
         self.reference_mv = reference["converter"]["reference_mv"]

@@ -56,7 +56,11 @@ class Requests:
         if plan.key != box.course.run_key:
             _refuse_run(box, plan)
             box.course.begin_run(plan)
-        return [("run_key", box.course.run_key), ("run", box.course.run), ("estimate_ms", box.course.plan.estimate_ms(box.ratings))]
+        return [
+            ("run_key", box.course.run_key),
+            ("run", box.course.run),
+            ("estimate_ms", box.course.plan.estimate_ms(box.ratings)),
+        ]
 
     def _finish(self, box, params):
         if box.course.state != DWELL:

@@ -145,10 +145,16 @@ class Bench:
         if not self.supply.quiet(now) or not front.settled(now) or front.clipped or self.supply.ramping:
             return
         mv = front.mean_part_mv
-        drop_mv = (front.na(front.mean_code10) // 10 + self.divider_na(mv)) * (self.ratings.charge_ohm // 1000) // 1000
+        drop_mv = (
+            (front.na(front.mean_code10) // 10 + self.divider_na(mv))
+            * (self.ratings.charge_ohm // 1000)
+            // 1000
+        )
         left_mv = self.supply.mv - drop_mv
         if left_mv > self.ratings.safe_mv:
-            self.proof.never_charged = False  # the part may have taken charge: its divider must vouch otherwise
+            self.proof.never_charged = (
+                False  # the part may have taken charge: its divider must vouch otherwise
+            )
         if self.relays == _ON_CHARGE:
             slack_mv = self.supply.mv // 1000 * _PATH_PM + _PATH_MV
             self.astray = not -slack_mv <= left_mv - mv <= slack_mv

@@ -43,7 +43,9 @@ class Part:
         """Read a marking. Raises MarkingError with the readings to choose from when there is more than one, or none."""
         if len(text) > LONGEST:
             raise MarkingError(
-                f"A marking of {len(text)} letters is too long.", remedy=f"Type at most {LONGEST} letters.", readings=[]
+                f"A marking of {len(text)} letters is too long.",
+                remedy=f"Type at most {LONGEST} letters.",
+                readings=[],
             )
         clean = uniform(text)
         pieces = _BETWEEN.split(clean)
@@ -108,7 +110,9 @@ def _can(text: str, sections: list[Part]) -> Part:
     doubts = tuple(dict.fromkeys(sentence for section in sections for sentence in section.doubts))
     if dielectric:
         doubts = tuple(sentence for sentence in doubts if not sentence.startswith("No dielectric"))
-    shared = tuple(replace(section, dielectric=dielectric, polar=polar, understood=(), doubts=()) for section in sections)
+    shared = tuple(
+        replace(section, dielectric=dielectric, polar=polar, understood=(), doubts=()) for section in sections
+    )
     return Part(
         marking=text,
         rated_V=max((section.rated_V or 0.0 for section in sections), default=0.0) or None,

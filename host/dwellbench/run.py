@@ -74,7 +74,9 @@ class Run:
             if status["run"] != self.number:
                 break
             self._box.expect(status["n"])
-        raise LinkError("The box says nothing more of this run.", remedy="See what it is doing with: dwellbench box.")
+        raise LinkError(
+            "The box says nothing more of this run.", remedy="See what it is doing with: dwellbench box."
+        )
 
     def _take(self, notice: Notice) -> None:
         params = notice.params
@@ -133,8 +135,16 @@ class Run:
             "simulated": identity.simulated,
             "end": self.end,
             "fault": self.fault,
+            "asked_V": self.plan.volts_V,
+            "dwell_asked_s": self.plan.dwell_s,
         }
-        info.update({name: self.done[name] for name in ("look_pf", "short_mv", "short_na", "residual_mv") if name in self.done})
+        info.update(
+            {
+                name: self.done[name]
+                for name in ("look_pf", "short_mv", "short_na", "residual_mv")
+                if name in self.done
+            }
+        )
         return RawTrace.from_rows(self.rows, info)
 
     def raise_fault(self) -> None:

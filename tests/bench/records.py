@@ -1,6 +1,6 @@
 """What the store costs: writing a run, bytes a record and a trace, finding as it grows.
 
-    python -m tests.bench.records [RECORDS]
+python -m tests.bench.records [RECORDS]
 """
 
 from __future__ import annotations
@@ -10,9 +10,9 @@ import time
 from pathlib import Path
 from tempfile import TemporaryDirectory
 
-from dwellbench.records import Store
-
 from tests.records.test_store import ROWS, begin
+
+from dwellbench.records import Store
 
 
 def timed(store: Store, **where: str) -> float:
@@ -35,15 +35,21 @@ def main(most: int) -> None:
                     writer.rows(rows[at : at + 10])
                 writer.end("complete", None, {"verdict": "fit", "reason": "because"})
             cost_ms = (time.perf_counter() - begin_s) * 50
-            print(f"a run of {len(rows)} rows costs {cost_ms:.1f} ms to write, {path.stat().st_size / 20 / 1024:.1f} kB")
+            print(
+                f"a run of {len(rows)} rows costs {cost_ms:.1f} ms to write, {path.stat().st_size / 20 / 1024:.1f} kB"
+            )
             count = 20
             size = most // 100
             while count < most:
                 for _ in range(size - count if size > count else 0):
-                    begin(store, label=f"L{count}").end("complete", None, {"verdict": "unfit", "reason": "because"})
+                    begin(store, label=f"L{count}").end(
+                        "complete", None, {"verdict": "unfit", "reason": "because"}
+                    )
                     count += 1
                 page, found = timed(store), timed(store, text="L7")
-                print(f"{count:8} records: a page {page:6.2f} ms, a search {found:6.2f} ms, {path.stat().st_size / count:6.0f} bytes each")
+                print(
+                    f"{count:8} records: a page {page:6.2f} ms, a search {found:6.2f} ms, {path.stat().st_size / count:6.0f} bytes each"
+                )
                 size *= 10
 
 

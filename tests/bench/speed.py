@@ -1,6 +1,6 @@
 """How fast virtual time goes: a whole run through firmware, wire and host, in both interpreters, and where it goes.
 
-    python -m tests.bench.speed
+python -m tests.bench.speed
 """
 
 from __future__ import annotations
@@ -16,12 +16,12 @@ from dwellbench.records import Store
 
 def whole(interpreter: str) -> tuple[float, float]:
     """A run of a 47 nF part, 60 s dwell, judged and recorded: (virtual seconds, wall seconds), start-up left out."""
-    with TemporaryDirectory() as folder, Store(Path(folder) / "r.db") as store:
-        with open_box(f"emu://film?seed=3&interpreter={interpreter}") as box:
-            box.settle()
-            virtual, wall = box.clock(), time.perf_counter()
-            box.test("47n 630V film", "coupling", store)
-            return box.clock() - virtual, time.perf_counter() - wall
+    url = f"emu://film?seed=3&interpreter={interpreter}"
+    with TemporaryDirectory() as folder, Store(Path(folder) / "r.db") as store, open_box(url) as box:
+        box.settle()
+        virtual, wall = box.clock(), time.perf_counter()
+        box.test("47n 630V film", "coupling", store)
+        return box.clock() - virtual, time.perf_counter() - wall
 
 
 def firmware_and_world(interpreter: str, seconds: float = 60.0) -> tuple[float, float]:

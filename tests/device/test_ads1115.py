@@ -1,6 +1,7 @@
 """The converter's driver against a bus that enforces the data sheet (TI SBAS444E): registers, words, timing, silence."""
 
 import pytest
+
 from dwellbox.ads1115 import ADS1115, RESET_WORD, Silent
 
 NONE = 40000

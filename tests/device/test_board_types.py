@@ -37,7 +37,9 @@ def complaints(root: Path, board: str) -> list[str]:
     command = [sys.executable, "-m", "mypy", "--custom-typeshed-dir", str(typeshed), "--check-untyped-defs"]
     command += ["--cache-dir", str(root / "cache"), "-p", "dwellbox.board_rp2"]
     environment = {"MYPYPATH": f"{modules}:{root / 'check'}", "PATH": ""}
-    done = subprocess.run(command, cwd=root / "check", env=environment, capture_output=True, text=True, check=False)
+    done = subprocess.run(
+        command, cwd=root / "check", env=environment, capture_output=True, text=True, check=False
+    )
     assert "dwellbox" in done.stdout or done.returncode == 0, done.stdout + done.stderr
     return [line for line in done.stdout.splitlines() if "board_rp2.py" in line and ": error:" in line]
 

@@ -1,6 +1,7 @@
 """The interlock table: every row fires in its states after its periods, and with any one of its conditions missing it does not."""
 
 import pytest
+
 from dwellbox import codes, interlock
 from dwellbox.interlock import TABLE, Interlock
 
@@ -32,7 +33,9 @@ def test_a_row_fires_in_its_states_and_only_there(row: tuple[int, ...], state: i
 
 
 @pytest.mark.parametrize("row", TABLE, ids=lambda row: codes.FAULTS[row[0]])
-def test_a_row_does_not_fire_without_one_of_its_conditions_or_with_what_must_be_absent(row: tuple[int, ...]) -> None:
+def test_a_row_does_not_fire_without_one_of_its_conditions_or_with_what_must_be_absent(
+    row: tuple[int, ...],
+) -> None:
     _fault, present, absent, states, periods = row
     state = next(s for s in STATES if states >> s & 1)
     bit = 1
@@ -73,5 +76,12 @@ def test_calm_looks_at_every_row_but_lid_and_bolt() -> None:
     guard = Interlock()
     assert guard.calm(interlock.PART_LOW)
     assert guard.calm(interlock.PART_LOW | interlock.LID_OPEN | interlock.UNLOCKED)
-    for bit in (interlock.STOP, interlock.SILENT, interlock.STUCK, interlock.SUPPLY_ON, interlock.WARM, interlock.LID_UNSURE):
+    for bit in (
+        interlock.STOP,
+        interlock.SILENT,
+        interlock.STUCK,
+        interlock.SUPPLY_ON,
+        interlock.WARM,
+        interlock.LID_UNSURE,
+    ):
         assert not guard.calm(interlock.PART_LOW | bit)

@@ -3,12 +3,15 @@
 from types import SimpleNamespace
 
 import pytest
+
 from dwellbox.proof import BLEED, OPEN, Proof
 
 RATINGS = SimpleNamespace(still_ms=1000, rebound_ms=500, proof_bleed_ms=30000)
 
 
-def prove(proof: Proof, until_ms: int, *, start: int = 0, below=lambda t: True, supply=lambda t: True) -> int | None:
+def prove(
+    proof: Proof, until_ms: int, *, start: int = 0, below=lambda t: True, supply=lambda t: True
+) -> int | None:
     """Step every 5 ms; return when it was proven."""
     proof.begin(start)
     for t in range(0, until_ms, 5):

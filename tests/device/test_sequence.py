@@ -3,6 +3,7 @@
 import itertools
 
 import pytest
+
 from dwellbox import codes, sequence
 from dwellbox.sequence import EVENTS, MOVES, move
 
@@ -14,7 +15,9 @@ def test_every_state_has_a_row() -> None:
     assert set(MOVES) == set(range(len(codes.STATES)))
 
 
-@pytest.mark.parametrize(("state", "event"), list(itertools.product(range(len(codes.STATES)), range(len(EVENTS)))))
+@pytest.mark.parametrize(
+    ("state", "event"), list(itertools.product(range(len(codes.STATES)), range(len(EVENTS))))
+)
 def test_every_pair_either_moves_by_its_row_or_fails_closed(state: int, event: int) -> None:
     row = MOVES[state].get(event, ())
     for facts in ALL_FACTS:
@@ -52,7 +55,9 @@ def test_the_supply_may_come_on_only_by_an_accepted_run() -> None:
 
 
 def test_lockout_is_left_only_by_acknowledgement() -> None:
-    out = {event for event, ways in MOVES[codes.LOCKOUT].items() if any(to != codes.LOCKOUT for _, to in ways)}
+    out = {
+        event for event, ways in MOVES[codes.LOCKOUT].items() if any(to != codes.LOCKOUT for _, to in ways)
+    }
     assert out == {sequence.EV_ACKNOWLEDGE}
     for facts in ALL_FACTS:
         left = move(codes.LOCKOUT, sequence.EV_ACKNOWLEDGE, facts) == codes.REST

@@ -4,6 +4,7 @@ import json
 from pathlib import Path
 
 import pytest
+
 from dwellbox import codes, supply
 from dwellbox.latch import Latch
 from dwellbox.plan import Plan, refusal
@@ -96,7 +97,9 @@ def test_a_supply_that_stays_up_after_it_was_switched_off_is_found_even_days_lat
         (1, 47_000, (0, 1)),  # above 10 uF the charge path rules
     ],
 )
-def test_the_most_sensitive_shunt_with_room_that_settles(current_na: int, nf: int, level: tuple[int, int]) -> None:
+def test_the_most_sensitive_shunt_with_room_that_settles(
+    current_na: int, nf: int, level: tuple[int, int]
+) -> None:
     assert LEVELS[Shunts(RATINGS).finest(current_na, nf)] == level
 
 
@@ -144,7 +147,9 @@ def test_a_stricter_box_refuses_what_the_reference_would_run() -> None:
     assert refusal(plan, strict)[0] == codes.E_BEYOND_RATING
 
 
-@pytest.mark.parametrize(("pf", "volts_mv", "fits"), [(470_000_000, 450000, True), (470_000_000, 470000, False)])
+@pytest.mark.parametrize(
+    ("pf", "volts_mv", "fits"), [(470_000_000, 450000, True), (470_000_000, 470000, False)]
+)
 def test_energy_above_the_rating_is_refused(pf: int, volts_mv: int, fits: bool) -> None:
     plan = Plan({"run_key": "a", "volts_mv": volts_mv, "dwell_ms": 1000, "expect_pf": pf})
     assert (refusal(plan, RATINGS) is None) is fits

@@ -70,8 +70,14 @@ def _error(code: int, id_: Any) -> dict[str, Any]:
 CALLS = (
     ('{"jsonrpc": "2.0", "method": "subtract", "params": [42, 23], "id": 1}', [_error(-32601, 1)]),
     ('{"jsonrpc": "2.0", "method": "subtract", "params": [23, 42], "id": 2}', [_error(-32601, 2)]),
-    ('{"jsonrpc": "2.0", "method": "subtract", "params": {"subtrahend": 23, "minuend": 42}, "id": 3}', [_error(-32601, 3)]),
-    ('{"jsonrpc": "2.0", "method": "subtract", "params": {"minuend": 42, "subtrahend": 23}, "id": 4}', [_error(-32601, 4)]),
+    (
+        '{"jsonrpc": "2.0", "method": "subtract", "params": {"subtrahend": 23, "minuend": 42}, "id": 3}',
+        [_error(-32601, 3)],
+    ),
+    (
+        '{"jsonrpc": "2.0", "method": "subtract", "params": {"minuend": 42, "subtrahend": 23}, "id": 4}',
+        [_error(-32601, 4)],
+    ),
     # notifications, known or not: no answer
     ('{"jsonrpc": "2.0", "method": "update", "params": [1,2,3,4,5]}', NOTHING),
     ('{"jsonrpc": "2.0", "method": "foobar"}', NOTHING),
@@ -140,4 +146,6 @@ def test_the_published_texts() -> None:
         -32603: "Internal error",
     }
     assert {code: ERRORS[code] for code in published} == published
-    assert all(-32099 <= code <= -32000 for code in ERRORS if code not in published), "the implementation's own range"
+    assert all(-32099 <= code <= -32000 for code in ERRORS if code not in published), (
+        "the implementation's own range"
+    )

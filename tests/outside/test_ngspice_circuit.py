@@ -7,8 +7,8 @@ it is not installed.
 
 from __future__ import annotations
 
-import os
 import json
+import os
 import re
 import shutil
 import subprocess
