@@ -138,6 +138,9 @@ def _doubtful(case: Case, rows: list[Row], ids: dict[str, str]) -> _Answer:
     needed_V = case.place_V
     if needed_V is not None and (case.valid_to_V or 0.0) * _NEAR < needed_V:
         why = f"Tested at {volts(case.test_V)}, below the place's {volts(needed_V)}."
+        if "sag" in ids:
+            again = "Re-form it, let it rest, then test again." if _may_form(case) else "Find what leaks first."
+            return UNDECIDED, f"{ids['sag']} The place has {volts(needed_V)}.", again
         return UNDECIDED, why, f"Test it at {volts(needed_V)}."
     if "intermittent" in ids:
         return (
@@ -224,11 +227,16 @@ def _next(case: Case, verdict: str, rows: list[Row], ids: dict[str, str], elsewh
         return _next_fit(case, ids)
     if verdict == UNFIT:
         return _next_unfit(case, rows, ids, elsewhere)
-    if "forming" in ids:
+    if "forming" in ids or ("sag" in ids and _may_form(case)):
         return "re_form_then_test"
     if case.place is not None and case.place.beyond_box:
         return "other_place"
     return "clean_and_retest" if "fixture" in ids else None
+
+
+def _may_form(case: Case) -> bool:
+    """An electrolytic that pulls the voltage down may only have lost oxide."""
+    return case.part.dielectric == "electrolytic"
 
 
 def _next_fit(case: Case, ids: dict[str, str]) -> str:
