@@ -5,6 +5,7 @@ from .compat import const
 from .encode import LINE, TAIL, members, text
 
 _ROOM = LINE - TAIL
+_ID_ROOM = const(41)  # a brace, the id's name, and its 16 letters, each of which may need a backslash
 _HEAD = '{"jsonrpc":"2.0",'
 _SLICE = const(4)  # members written in a period: 0.5 ms on the reference board
 
@@ -55,13 +56,15 @@ class Replies:
         return False
 
     def error(self, id_, code, data):
-        """Write an error whole."""
+        """Write an error whole; without its data when they do not fit."""
         pairs = [("code", code), ("message", ERRORS[code])]
-        if data is not None:
-            pairs.append(("data", data))
         self._length = 0
         self._id = id_
         self._add(_HEAD + '"error":{' + members(pairs))
+        if data is not None:
+            words = ',"data":' + text(data)
+            if self._length + len(words.encode()) <= _ROOM - _ID_ROOM:
+                self._add(words)
         self._finish("}")
 
     def _finish(self, end):

@@ -226,6 +226,20 @@ def test_a_refusal_carries_its_code_text_and_reason() -> None:
     assert list(line) == ["jsonrpc", "error", "id", "crc"]
 
 
+@pytest.mark.parametrize("size", range(365, 380))
+def test_reasons_too_long_for_a_line_are_left_out(size: int) -> None:
+    """With the longest id, up to the last byte of a line."""
+    bench = Bench()
+    bench.handler.refuse["finish"] = Refusal(-32010, "x" * size)
+    id_ = '"' + "\\\\" * 16 + '"'
+    head = '{"jsonrpc":"2.0","error":{"code":-32010,"message":"Not in this state"'
+    whole = sealed(f'{head},"data":"{"x" * size}"}},"id":{id_}') + b"\n"
+    without = sealed(f'{head}}},"id":{id_}') + b"\n"
+    bench.board.incoming.extend(asked("finish", id_=id_) + b"\n")
+    bench.step(300)
+    assert bench.board.sent == (whole if len(whole) <= LINE else without)
+
+
 def test_a_defect_behind_the_wire_is_answered_and_the_loop_goes_on() -> None:
     bench = Bench()
     bench.handler.refuse["status"] = ZeroDivisionError("x" * 100)
