@@ -7,6 +7,7 @@ digits (NOT_WHOLE).
 """
 
 from .compat import const
+from .numeral import FRACTION, GRAMMAR, INT, KIND, KINDS, POWER, ZERO
 
 _VALUE = const(0)
 _FIRST_KEY = const(1)
@@ -34,32 +35,6 @@ _PLAIN = bytes([32 <= byte < 128 and byte != 34 and byte != 92 for byte in range
 
 _WORDS = {116: (b"true", True), 102: (b"false", False), 110: (b"null", None)}
 _ESCAPES = {34: 34, 92: 92, 47: 47, 98: 8, 102: 12, 110: 10, 114: 13, 116: 9}
-
-# A number's grammar (RFC 8259, section 6): from what has come, by the kind of the next byte, to what has come then; 0: not allowed.
-_ZERO = const(1)
-_INT = const(2)
-_POINT = const(3)
-_FRACTION = const(4)
-_EXPONENT = const(5)
-_SIGN = const(6)
-_POWER = const(7)
-_KINDS = const(7)
-_NEXT = (
-    # other, 0, 1 to 9, point, e, plus, minus
-    (0, _ZERO, _INT, 0, 0, 0, 0),  # nothing, or the minus before it
-    (0, 0, 0, _POINT, _EXPONENT, 0, 0),  # _ZERO
-    (0, _INT, _INT, _POINT, _EXPONENT, 0, 0),  # _INT
-    (0, _FRACTION, _FRACTION, 0, 0, 0, 0),  # _POINT
-    (0, _FRACTION, _FRACTION, 0, _EXPONENT, 0, 0),  # _FRACTION
-    (0, _POWER, _POWER, 0, 0, _SIGN, _SIGN),  # _EXPONENT
-    (0, _POWER, _POWER, 0, 0, 0, 0),  # _SIGN
-    (0, _POWER, _POWER, 0, 0, 0, 0),  # _POWER
-)
-_GRAMMAR = bytes([after for row in _NEXT for after in row])
-_KIND = bytearray(256)
-for _kind, _bytes in enumerate((b"", b"0", b"123456789", b".", b"eE", b"+", b"-")):
-    for _byte in _bytes:
-        _KIND[_byte] = _kind
 
 
 class NotWhole:
@@ -225,11 +200,11 @@ class Scanner:
             self._in_number(byte)
 
     def _in_number(self, byte):
-        kind = _KIND[byte]
-        after = _GRAMMAR[self._grammar * _KINDS + kind]
+        kind = KIND[byte]
+        after = GRAMMAR[self._grammar * KINDS + kind]
         if after:
             self._grammar = after
-            if after <= _INT:
+            if after <= INT:
                 digits = self._digits
                 self._digits = digits + 1
                 if digits < _DIGITS:
@@ -243,12 +218,12 @@ class Scanner:
 
     def _end_number(self):
         grammar = self._grammar
-        if grammar in (_ZERO, _INT):
+        if grammar in (ZERO, INT):
             if self._digits > _DIGITS:
                 self._put(NOT_WHOLE)
             else:
                 self._put(-self._number if self._minus else self._number)
-        elif grammar in (_FRACTION, _POWER):
+        elif grammar in (FRACTION, POWER):
             self._put(NOT_WHOLE)
         else:
             self._state = _BAD
