@@ -69,7 +69,8 @@ class Controller:
         except Exception as error:  # whatever it is, the outputs go to rest first
             self._shut_down(error)
         self.board.feed()
-        self.wire.step(now)
+        if not self.bench.cut_now:  # a period that has ended a window has no room for the link too
+            self.wire.step(now)
         if self.maintenance:
             self._leave()
 
@@ -96,6 +97,7 @@ class Controller:
         bench.below = not bits & (PART_LIVE | HV | SILENT | STUCK)
         bench.locked = not bits & UNLOCKED
         bench.window = False
+        bench.cut_now = False
         if self.front.edge:
             bench.cut(now)
             bench.window = self.front.whole

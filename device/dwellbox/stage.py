@@ -63,6 +63,7 @@ class Bench:
         self.short_mv = 0
         self.short_na = 0
         self.window = False  # a whole window has just been kept
+        self.cut_now = False  # a window, whole or not, has ended in this period
         self.locked = False  # the bolt is in
         self.below = False  # both witnesses below safe
         self.astray = False  # over the last window supply, current and part voltage did not fit together
@@ -123,6 +124,7 @@ class Bench:
 
     def cut(self, now):
         """End the window here, whole or not, so that no row mixes two circumstances."""
+        self.cut_now = True
         self.front.close(now, self.recording, ticks_diff(now, self.base_ms), self.stage, self.flags)
 
     def gone(self, now):

@@ -1,6 +1,7 @@
 """What the look makes of charge and voltage: parts worked out by hand, currents through 400 kohm at 20 V."""
 
 import pytest
+
 from dwellbox.stages.solve import capacitance_pf, standing
 
 

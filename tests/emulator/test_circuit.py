@@ -157,7 +157,7 @@ def follow(c: Circuit, eq: Equations, sequence: list, least_v: float) -> float:
             across, low_now, plates = c.states()
             pairs = [(across, x[0] - x[1]), (low_now, x[1]), (c.s, s), (c.high_mean, high), (c.low_mean, low)]
             pairs += list(zip(plates.ladder_V, x[2:-3], strict=True))
-            worst = max(worst, max(abs(a - b) / (abs(b) + least_v) for a, b in pairs))
+            worst = max(worst, *(abs(a - b) / (abs(b) + least_v) for a, b in pairs))
     return worst
 
 
