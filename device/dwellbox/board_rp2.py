@@ -153,14 +153,16 @@ class BoardRp2(Board):
 
     def get(self):
         """Return the next byte from USB, or -1."""
-        if not self._poll.poll(0):
-            return -1
-        self._read(self._byte_in)
-        return self._byte_in[0]
+        for _ in self._poll.ipoll(0):  # ipoll touches no heap, poll makes a list each time
+            self._read(self._byte_in)
+            return self._byte_in[0]
+        return -1
 
     def room(self):
         """Return 1 when a byte can be sent without waiting."""
-        return 1 if self._room.poll(0) else 0
+        for _ in self._room.ipoll(0):
+            return 1
+        return 0
 
     def put(self, byte):
         """Send one byte."""
