@@ -114,7 +114,7 @@ def test_something_that_is_not_a_box(answer: bytes, error: type[LinkError]) -> N
 
 
 def test_another_major_version_is_refused(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    from dwellbench import box as box_module
+    from dwellbench.wire import conversation as box_module
 
     monkeypatch.setattr(box_module, "MAJOR", 2)
     with pytest.raises(WrongBoxError, match="version 1 of the wire"):
@@ -296,7 +296,7 @@ def test_a_link_cut_in_mid_run_and_restored_loses_no_sample(
             cable.port.wait(gone_s)
             cable.put_back()
             raise NoBoxError("still gone")
-        monkeypatch.setattr("dwellbench.box.open_link", lambda url, log: cable.link)
+        monkeypatch.setattr("dwellbench.wire.conversation.open_link", lambda url, log: cable.link)
         return original()
 
     original = film._reopened

@@ -21,6 +21,7 @@ from dwellbench.errors import UsageError
 from dwellbench.limits.decide import Thresholds
 
 APP = "dwellbench"
+_PLAIN_WIDTH = 150  # of tables that go into a file or a pipe
 F = TypeVar("F", bound=Callable[..., Any])
 
 
@@ -51,7 +52,8 @@ class Options:
 
     def console(self) -> Console:
         """Rich output for people, on the same stream as `say`."""
-        return Console(stderr=self.json, highlight=False)
+        console = Console(stderr=self.json, highlight=False)
+        return console if console.is_terminal else Console(stderr=self.json, highlight=False, width=_PLAIN_WIDTH)
 
 
 def global_options(command: F) -> F:
