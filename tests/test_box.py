@@ -368,6 +368,11 @@ def test_a_controller_that_is_reset_in_a_run_says_so_and_is_safe(tmp_path: Path,
         box._link._port.wait(40)
         status = box.status()
         assert (status["state"], status["fault"]) == ("lockout", "reset_in_run")
+        with pytest.raises(RefusedError, match="not accounted for") as caught:
+            box.acknowledge()
+        assert "--shorted" in caught.value.remedy
+        box.acknowledge(shorted=True)
+        assert box.status()["state"] == "rest"
         assert abs(truth(box).part_V) < 30
         assert not truth(box).hurt
 

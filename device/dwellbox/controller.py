@@ -140,6 +140,7 @@ class Controller:
         """Take up settings just written. At rest only; allocates."""
         self.ratings = Ratings(self.reference, _settings(self.board))
         self.bench.ratings = self.ratings
+        self.conditions.warm_code = code_at(self.ratings.part_temp_mc)
         self.course.paused = True
 
     def _leave(self):

@@ -123,7 +123,7 @@ class Conditions:
         self._safe_mv = ratings.safe_mv
         self._low_mv = ratings.safe_mv // 2
         self._high_mv = ratings.disagree_mv
-        self._warm_code = warm_code
+        self.warm_code = warm_code
         self.most_mv = ratings.safe_mv
         self.ceiling_na = 0
         self.lid_shut = False
@@ -188,7 +188,7 @@ class Conditions:
             if code:
                 if code > _OPEN_CODE or code < _SHORT_CODE:
                     slow |= THERMISTOR
-                elif code < self._warm_code:
+                elif code < self.warm_code:
                     slow |= WARM
             self._held = slow
         self.bits = bits | self._held

@@ -82,8 +82,10 @@ class Requests:
         if params.get("shorted") and box.course.proof.proven:
             box.course.latch.missing = False
         facts = box.course.facts()
-        if not facts & PROVEN or not facts & ACCOUNTED:
+        if not facts & PROVEN:
             raise Refusal(E_NOT_SAFE)
+        if not facts & ACCOUNTED:
+            raise Refusal(E_NOT_SAFE, "charge_missing")
         if not facts & CALM:
             raise Refusal(E_HARDWARE)
         box.course.event(EV_ACKNOWLEDGE, "acknowledged")

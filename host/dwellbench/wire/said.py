@@ -43,6 +43,12 @@ _BEYOND = {
 }
 
 
+_MISSING = (
+    "The part's charge is not accounted for: a lead may have let go, or the box was reset in a run.",
+    "Treat the part as charged. Wait, use an insulated shorting stick through the port, then: dwellbench box --acknowledge --shorted.",
+)
+
+
 def refused(refusal: Refusal) -> DwellbenchError:
     """Return the error to raise for a refusal."""
     name = refusal.name
@@ -50,6 +56,8 @@ def refused(refusal: Refusal) -> DwellbenchError:
         sentence, remedy = _BEYOND.get(
             str(refusal.data), ("This is beyond the box's rating.", "Ask for less.")
         )
+    elif name == "not_safe" and refusal.data == "charge_missing":
+        sentence, remedy = _MISSING
     else:
         sentence, remedy = _SAY.get(
             name, (f"The box refused: {refusal.message}.", "See the protocol's text for this error.")
