@@ -45,6 +45,20 @@ def test_every_sample_that_came_is_in_the_record(tmp_path: Path) -> None:
     assert kept.tolist() == rows
 
 
+@pytest.mark.parametrize(
+    ("marking", "body", "shortened"), [("47n 630V film", FILM, True), ("47n 630V paper", FILM, False)]
+)
+def test_a_dwell_may_end_early_when_the_verdict_is_certain_and_never_for_paper(
+    tmp_path: Path, marking: str, body: str, shortened: bool
+) -> None:
+    with ready(scenario(tmp_path, body) + "?seed=5") as box:
+        outcome = box.test(marking, "coupling@310V/470k", may_end_early=True)
+    assert outcome.verdict == "fit"
+    assert outcome.dwell_complete is not shortened
+    assert (outcome.dwell_s is not None and outcome.dwell_s < 15) is shortened
+    assert outcome.end == ("finished" if shortened else "complete")
+
+
 def test_a_dead_short_is_unfit_with_status_3_and_the_box_at_rest(tmp_path: Path) -> None:
     with ready(scenario(tmp_path, SHORT) + "?seed=5") as box, Store(tmp_path / "r.db") as store:
         outcome = box.test("100n 400V paper", "tone", store)

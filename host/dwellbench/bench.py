@@ -13,7 +13,7 @@ from typing import Any, Protocol
 
 from dwellbench.box import Box
 from dwellbench.errors import DwellbenchError, LinkError, StoppedError, UsageError
-from dwellbench.judge import judge
+from dwellbench.judge import judge, may_end
 from dwellbench.limits.decide import Thresholds
 from dwellbench.limits.place import Place
 from dwellbench.measure.calibrate import calibrate
@@ -68,8 +68,12 @@ def test_part(
     thresholds: Thresholds | None = None,
     esr_ohm: float | None = None,
     role: str | None = None,
+    may_end_early: bool = False,
 ) -> Outcome:
     """Run, judge and record one part that lies under the closed lid. Returns the outcome, stamped with its record.
+
+    With `may_end_early` the dwell ends as soon as the verdict of the whole dwell is certain enough (see `judge.may_end` for
+    what that risks); the outcome then says that it was cut short.
 
     Raises RefusedError before anything is energised, StoppedError after the user stopped it, LinkError and FaultError; the
     record, if there is a store, is closed with what had been measured in every case.
@@ -85,7 +89,12 @@ def test_part(
         run = box.start(plan)
         if watcher is not None:
             watcher.began(plan, run)
-        _follow(run, writer, watcher)
+        _follow(
+            run,
+            writer,
+            watcher,
+            _Ender(box, part, place, grade, calibration, thresholds) if may_end_early else None,
+        )
     except BaseException as error:
         reason = _made_safe(run, error)
         _interrupted(writer, run, reason)
@@ -134,13 +143,46 @@ def _open(
     )
 
 
-def _follow(run: Run, writer: RunWriter | None, watcher: Watcher | None) -> None:
+class _Ender:
+    """Asks the judge once a second of dwell whether the run may end, and asks the box to finish when it may."""
+
+    def __init__(
+        self,
+        box: Box,
+        part: Part,
+        place: Place | None,
+        grade: str,
+        calibration: Calibration | None,
+        thresholds: Thresholds | None,
+    ) -> None:
+        self._box = box
+        self._about = (part, place)
+        self._grade = grade
+        self._calibration = calibration
+        self._thresholds = thresholds
+        self._asked_ms = 0
+        self._over = False
+
+    def look(self, run: Run) -> None:
+        """Look at what has come so far."""
+        if self._over or run.state != "dwell" or not run.rows or run.rows[-1][1] - self._asked_ms < 1000:
+            return
+        self._asked_ms = run.rows[-1][1]
+        trace = calibrate(run.raw(), self._calibration)
+        if may_end(trace, *self._about, grade=self._grade, thresholds=self._thresholds) is not None:
+            self._over = True
+            self._box.finish()
+
+
+def _follow(run: Run, writer: RunWriter | None, watcher: Watcher | None, ender: _Ender | None) -> None:
     """Everything that comes goes into the record first, then to whoever watches."""
     for notice in run:
         if writer is not None:
             record(writer, notice)
         if watcher is not None:
             watcher.happened(notice, run)
+        if ender is not None:
+            ender.look(run)
 
 
 def record(writer: RunWriter, notice: Notice) -> None:

@@ -53,7 +53,9 @@ class Options:
     def console(self) -> Console:
         """Rich output for people, on the same stream as `say`."""
         console = Console(stderr=self.json, highlight=False)
-        return console if console.is_terminal else Console(stderr=self.json, highlight=False, width=_PLAIN_WIDTH)
+        return (
+            console if console.is_terminal else Console(stderr=self.json, highlight=False, width=_PLAIN_WIDTH)
+        )
 
 
 def global_options(command: F) -> F:

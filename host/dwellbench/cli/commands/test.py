@@ -32,6 +32,10 @@ Examples
   dwellbench test "20 MFD 450V electrolytic" --dwell 300
   dwellbench --box emu://film test "47n 630V film" --role coupling --yes     (without a box)
 
+With --dwell auto the run ends as soon as the verdict of the whole dwell is certain enough, never before ten seconds, never for
+paper, electrolytics or unknown kinds, and on any sign of activity the whole time is held. Steady leaks are found as surely; a part
+that begins to leak late may be missed. The outcome says that the dwell was cut short.
+
 The box puts up to 650 V on the part: loose parts only, lid closed, your local codes and licensed practice first. A bulged,
 leaking or cracked part is not energised. Afterwards fit a shorting wire before you lift the part out, and store it shorted.
 
@@ -48,7 +52,9 @@ unusable, 130 stopped by you after proven discharge.
 )
 @click.option("--volts", type=float, metavar="V", help="Test at this DC voltage.")
 @click.option(
-    "--dwell", metavar="SECONDS", help="Time of electrification; the usual one for the kind if left out."
+    "--dwell",
+    metavar="SECONDS",
+    help="Time of electrification (the usual one for the kind if left out), or auto.",
 )
 @click.option(
     "--grade",
@@ -78,7 +84,8 @@ def command(ctx: click.Context, /, **given: Any) -> int:
     """Run the command."""
     options = ready(ctx, given)
     bench.refuse_looks(given["looks"])
-    given["dwell"] = _seconds(given["dwell"])
+    auto = given["dwell"] == "auto"
+    given["dwell"] = None if auto else _seconds(given["dwell"])
     part = chosen(Part.parse(given["marking"]), given["section"])
     role = options.places.get(given["role"], given["role"])
     place = Place.parse(role)
@@ -105,6 +112,7 @@ def command(ctx: click.Context, /, **given: Any) -> int:
                 thresholds=options.thresholds,
                 esr_ohm=given["esr"],
                 role=role,
+                may_end_early=auto,
             )
     if options.json:
         options.document(outcome.as_json())
@@ -151,7 +159,7 @@ def _seconds(text: str | None) -> float | None:
         return float(text)
     except ValueError:
         raise UsageError(
-            f"{text!r} is not a time in seconds.", remedy="Say, for example, --dwell 60."
+            f"{text!r} is not a time in seconds.", remedy="Say, for example, --dwell 60, or --dwell auto."
         ) from None
 
 
