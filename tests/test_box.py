@@ -396,3 +396,33 @@ def test_a_state_file_keeps_the_box_between_openings(tmp_path: Path) -> None:
     with ready(url) as box:
         assert box.identity.boot == boot + 1
         assert box.clock() > now_s
+
+
+@pytest.mark.parametrize("at_s", [1.0, 2.5, 5.0, 7.0, 9.0])
+@pytest.mark.parametrize(("body", "marking"), [(FILM, "47n 630V film"), (FILM_1U, "1uF 630V film")])
+def test_a_charge_relay_that_dies_is_a_fault_whenever_it_dies(
+    tmp_path: Path, body: str, marking: str, at_s: float
+) -> None:
+    with ready(scenario(tmp_path, body, extra=fault("charge_relay_dead", at_s)) + "?seed=5") as box:
+        run = box.start(plan(box, marking, dwell=10.0))
+        list(run)
+        assert run.fault in ("way_down", "divider", "no_rise", "second_bleed")
+        assert not truth(box).hurt
+
+
+def test_an_event_that_never_comes_whole_is_lost_alone(film: Bench, monkeypatch: pytest.MonkeyPatch) -> None:
+    """A firmware that sent what the schema does not allow: the host goes on without that one event."""
+    from dwellbench.wire.core import Junk
+
+    receive = film._client.receive
+
+    def spoilt(data: bytes) -> list[Any]:
+        return [Junk(b"", "spoilt") if getattr(one, "n", None) == 40 else one for one in receive(data)]
+
+    monkeypatch.setattr(film._client, "receive", spoilt)
+    monkeypatch.setattr("dwellbench.wire.core.Notice.n", property(lambda self: int(self.params["n"])))
+    run = film.start(plan(film))
+    numbers = [notice.n for notice in run]
+    assert (run.end, film.lost) == ("complete", 1)
+    assert 40 not in numbers
+    assert len(numbers) == numbers[-1] - numbers[0]

@@ -143,8 +143,11 @@ class Charge:
         if mv * 20 >= bench.plan.volts_mv:
             bench.proof.followed = bench.proof.followed or mv * 2 > bench.plan.volts_mv
             return NEXT
-        bench.short_mv = mv
-        bench.short_na = bench.front.na(bench.front.mean_code10) // 10
+        shunt_na = bench.front.na(bench.front.mean_code10) // 10
+        if shunt_na * 10 < bench.path_na() * 8:
+            return faults(FAULT_NO_RISE)  # no voltage and no current either: the way to the part is broken
+        bench.short_mv = max(mv, 0)
+        bench.short_na = shunt_na
         return ends(END_SHORT)
 
 

@@ -157,7 +157,7 @@ class Look:
             return GO
         if shunt_na * 10 < bench.path_na() * 8:
             return GO
-        bench.short_mv = mv
+        bench.short_mv = max(mv, 0)
         bench.short_na = shunt_na
         return ends(END_REVERSED if bench.plan.polar and mv > POLAR_STALL_MV else END_SHORT)
 

@@ -76,7 +76,7 @@ class Prove:
         """The node does not come up: a short if the shunt sees the current, a broken way if it does not."""
         if shunt_na * 10 < path_na * 8 or path_na < 100000:
             return faults(FAULT_WAY_DOWN)
-        bench.short_mv = mv
+        bench.short_mv = max(mv, 0)
         bench.short_na = shunt_na
         polar = bench.plan.polar and mv > POLAR_STALL_MV
         return ends(END_REVERSED if polar else END_SHORT)

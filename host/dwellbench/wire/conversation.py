@@ -22,6 +22,7 @@ from dwellbench.wire.wire_log import WireLog
 ANSWER_S = 1.0  # the box answers within a few periods; a second covers a busy USB host
 TRIES = 3
 HELLO_S = 3.0
+FETCHES = 5  # times the same event is asked for
 KEEPALIVE_S = 0.5  # a quarter of the silence that ends a run
 RECONNECT_S = (
     30.0  # what the box recorded stays for two minutes; half a minute of trying, then the user is told
@@ -41,6 +42,8 @@ class Conversation:
         self._waiting: deque[Notice] = deque()
         self._stream = Stream(0)
         self._fetching: tuple[int | str, float] | None = None
+        self._fetched = -1
+        self._fetches = 0
         self._sent_s = -1e9
         self.keepalive = False
         self.restarted = False
@@ -208,8 +211,15 @@ class Conversation:
         gap = self._stream.missing()
         if gap is None:
             self._fetching = None
+            self._fetches = 0
             return
         if self._fetching is not None and self.clock() < self._fetching[1]:
+            return
+        self._fetches = self._fetches + 1 if gap[0] == self._fetched else 1
+        self._fetched = gap[0]
+        if self._fetches > FETCHES:  # it comes, and never as the schema has it: one event is lost, the rest is not
+            self._waiting.extend(self._stream.oldest_is(gap[0] + 1))
+            self._fetching = None
             return
         data, id_ = self._client.request("samples", {"from": gap[0], "count": gap[1]})
         self._fetching = (id_, self.clock() + ANSWER_S)

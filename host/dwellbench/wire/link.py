@@ -7,6 +7,7 @@ virtual seconds in one of ours), so that two seconds of silence mean the same ev
 
 from __future__ import annotations
 
+import contextlib
 import time
 from collections.abc import Callable
 from typing import Any
@@ -63,22 +64,30 @@ class Link:
             if self._port.timeout != wait:
                 self._port.timeout = wait
             data: bytes = self._port.read(1)
-            if data:
-                more = self._port.in_waiting
-                if more:
-                    data += self._port.read(min(more, _MOST))
         except LINK_ERRORS as error:
             raise _broke(self.url, error) from None
+        if data:
+            data += self._more()
         if data and self._log is not None:
             self._log.received(self.clock(), data)
         return data
 
+    def _more(self) -> bytes:
+        """What has come behind the first byte. A link that breaks here is told by the next read: what came before it is not lost."""
+        with contextlib.suppress(*LINK_ERRORS):
+            waiting = self._port.in_waiting
+            if waiting:
+                more: bytes = self._port.read(min(waiting, _MOST))
+                return more
+        return b""
+
     def close(self) -> None:
         """Close the port; a port that is gone already is no error."""
-        try:
+        beneath = getattr(self._port, "_socket", None)  # pyserial leaves it open when the other side has gone first
+        with contextlib.suppress(*LINK_ERRORS):
             self._port.close()
-        except LINK_ERRORS:
-            return
+        if beneath is not None:
+            beneath.close()
 
 
 def open_link(url: str, log: WireLog | None = None) -> Link:
