@@ -8,7 +8,9 @@ How it reads
 * Whatever the table finds goes to the sequence as a fault; nothing here switches anything.
 
 Why some rows wait: a relay bounces for 2 ms, lid switches for 10 ms at rest; the detector is faster than the divider, whose
-reading is one to three periods old while a small part charges or bleeds. Rows that guard a person (lid, stop) do not wait.
+reading is one to three periods old while a small part charges or bleeds. Rows that guard a person (lid, stop) do not wait:
+one lid switch that says open is an open lid. That the switches disagree is a fault of its own only where it stands for ten
+seconds at rest, for an opening lid moves them one after the other.
 
 A divider that has drifted, a charge relay or resistor that has opened, show as supply, current and part voltage that no longer
 fit together over the charge path; that is judged over a whole settled window and must stand into a second one.
@@ -87,7 +89,8 @@ _ALL = _RUN | _WAKE | _REST | _LOCK
 # (fault, conditions present, conditions absent, states, periods running)
 TABLE = (
     (FAULT_LID_OPEN, LID_OPEN, 0, _RUN, 1),
-    (FAULT_LID_SWITCHES, LID_UNSURE, 0, _RUN, 1),
+    (FAULT_LID_OPEN, LID_UNSURE, 0, _RUN, 1),
+    (FAULT_LID_SWITCHES, LID_UNSURE, 0, _REST, 2000),
     (FAULT_STOP, STOP, 0, _RUN, 1),
     (FAULT_OVER_VOLTAGE, OVER_VOLTAGE, 0, _POWERED, 2),
     (FAULT_SUPPLY_OVER, SUPPLY_OVER, 0, _POWERED, 1),
