@@ -22,8 +22,10 @@ from dwellbench.emulator.handlers.protocol_emu import ENDLESS_S
 from dwellbench.emulator.link_fifo import IN_BYTES, OUT_BYTES, LinkFifo
 from dwellbench.emulator.lockstep import LockstepBox
 from dwellbench.emulator.opening import Opening
+from dwellbench.emulator.outlet_pty import Pty
+from dwellbench.emulator.outlet_tcp import Tcp
 from dwellbench.emulator.scenario import Scenario
-from dwellbench.emulator.serve import Pty, Tcp, serve
+from dwellbench.emulator.serve import serve
 from dwellbench.errors import UsageError
 from dwellbench.wire.core import seal
 

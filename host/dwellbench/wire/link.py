@@ -83,7 +83,9 @@ class Link:
 
     def close(self) -> None:
         """Close the port; a port that is gone already is no error."""
-        beneath = getattr(self._port, "_socket", None)  # pyserial leaves it open when the other side has gone first
+        beneath = getattr(
+            self._port, "_socket", None
+        )  # pyserial leaves it open when the other side has gone first
         with contextlib.suppress(*LINK_ERRORS):
             self._port.close()
         if beneath is not None:

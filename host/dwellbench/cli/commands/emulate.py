@@ -11,7 +11,9 @@ import click
 from dwellbench.cli.context import global_options
 from dwellbench.cli.main import ready
 from dwellbench.emulator.opening import INTERPRETERS, Opening
-from dwellbench.emulator.serve import Outlet, Tcp, serve
+from dwellbench.emulator.outlet_pty import Pty
+from dwellbench.emulator.outlet_tcp import Tcp
+from dwellbench.emulator.serve import Outlet, serve
 from dwellbench.errors import UsageError
 
 _HELP = """Serve an emulated box: the real firmware on emulated hardware, reached like a board. Ctrl-C ends it.
@@ -94,10 +96,6 @@ def _interrupt(number: int, frame: object) -> None:
 
 def _outlet(given: dict[str, Any]) -> Outlet:
     if given["pty"] is not None:
-        try:
-            from dwellbench.emulator.serve import Pty
-        except ImportError:
-            raise UsageError("This computer has no pseudo-terminals.", remedy="Use --tcp.") from None
         return Pty(given["pty"])
     host, _, port = given["tcp"].rpartition(":")
     if not port.isdigit() or int(port) > 65535:
