@@ -22,6 +22,7 @@ COMMANDS = {
     "box": "box",
     "emulate": "emulate",
     "records": "records",
+    "limits": "limits",
 }
 
 _EPILOG = """
