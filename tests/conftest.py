@@ -6,6 +6,7 @@ from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
+
 from dwellbench.wire.core import Client, Junk
 
 DELIBERATE = Path(__file__).parent / "wire"  # there, lines that no schema allows are made on purpose

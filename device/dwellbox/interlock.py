@@ -110,9 +110,8 @@ TABLE = (
     (FAULT_CLOCK, LATE, 0, _RUN, 1),
 )
 
-_LATE_MS = const(
-    40
-)  # later than this and the supply's enable, which hardware drops after 50 ms, cannot be vouched for
+# Later than this, and the supply's enable, which hardware drops after 50 ms, cannot be vouched for.
+_LATE_MS = const(40)
 _SILENT_AFTER = const(2)
 _OPEN_CODE = const(31500)  # 10 kohm pull-up at 1.000 V: above this the thermistor is open
 _SHORT_CODE = const(300)

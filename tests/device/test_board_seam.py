@@ -9,7 +9,9 @@ from pathlib import Path
 import pytest
 
 ROOT = Path(__file__).parents[2]
-SEAM = dict(re.findall(r"^    (\w+)\((.*?)\)  ", (ROOT / "device/dwellbox/board.py").read_text("utf-8"), re.MULTILINE))
+SEAM = dict(
+    re.findall(r"^    (\w+)\((.*?)\)  ", (ROOT / "device/dwellbox/board.py").read_text("utf-8"), re.MULTILINE)
+)
 BOARDS = {
     "device/dwellbox/board_rp2.py": "BoardRp2",
     "host/dwellbench/emulator/in_process.py": "SimulatedBoard",

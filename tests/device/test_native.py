@@ -145,7 +145,9 @@ def packed(numbers: tuple[int, ...]) -> bytes:
     t, stage, shunt, range_, nv, sv, vmin, vmax, ni, si, imin, imax, iclip, vs, temp, flags, vrange = numbers
     first = 0 | vrange << 3 | stage << 4
     second = shunt | range_ << 2 | flags << 4
-    return struct.pack(row.FORM, first, second, t, sv, si, vmin, vmax, imin, imax, vs, temp, nv | ni << 5 | iclip << 10)
+    return struct.pack(
+        row.FORM, first, second, t, sv, si, vmin, vmax, imin, imax, vs, temp, nv | ni << 5 | iclip << 10
+    )
 
 
 def rows_text(made: Any, numbers: tuple[int, ...], start: int) -> str:

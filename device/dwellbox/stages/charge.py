@@ -16,9 +16,9 @@ from ..stage import GO, NEXT, ends, faults
 
 _FINE_BELOW_MV = const(230000)  # the divider's fine range reads to 256 V
 _ARM_MS = const(30)  # relays made before the supply moves
-_RAMP_REST_MS = const(
-    200
-)  # after the ramp: the charge path's own lag, five time constants at most 100 ms each
+# After the ramp: two windows at least, and seven time constants of the charge path, by which the part lags behind.
+_RAMP_REST_MS = const(200)
+_RAMP_REST_TAUS = const(7)
 _NO_RISE_LEAST_MS = const(400)
 _CLIPS = const(2)
 
@@ -104,7 +104,7 @@ class Charge:
             bench.cut(now)
             bench.flags = 0
             self._mark_ms = now
-        if ticks_diff(now, self._mark_ms) < _RAMP_REST_MS:
+        if ticks_diff(now, self._mark_ms) < max(_RAMP_REST_MS, _RAMP_REST_TAUS * self._tau_ms):
             return GO
         return self._in(bench)
 

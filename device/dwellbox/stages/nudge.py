@@ -14,9 +14,8 @@ from ..stage import GO, NEXT, faults
 _CALM_MS = const(300)  # on the low shunt before the step: one whole window of the current that flows anyway
 _LEAST_MS = const(300)
 _MOST_MS = const(3000)
-_SHARE = const(
-    50
-)  # per cent of the charge expected that must be seen; absorption and leakage move it by far less
+# Per cent of the charge expected that must be seen; absorption and leakage move it by far less.
+_SHARE = const(50)
 
 
 class Nudge:

@@ -8,9 +8,8 @@ part of the charging current there.
 
 from ..compat import const
 
-_BLURRED = const(
-    3
-)  # so many times more leaked than was stored: a per cent of doubt in the one is three in the other
+# So many times more leaked than was stored: a per cent of doubt in the one is three in the other.
+_BLURRED = const(3)
 
 
 def standing(charge_fc, rise_mv, change_mv, current_pa, ms):
