@@ -24,7 +24,9 @@ from dwellbench.emulator.part_spec import Superlinear
 from dwellbench.emulator.parts import PowerLaw
 
 NGSPICE = shutil.which("ngspice")
-pytestmark = pytest.mark.skipif(NGSPICE is None and not os.environ.get("CI"), reason="ngspice is not installed")
+pytestmark = pytest.mark.skipif(
+    NGSPICE is None and not os.environ.get("CI"), reason="ngspice is not installed"
+)
 
 BOX = json.loads((Path(__file__).parents[2] / "device" / "reference_box.json").read_text("utf-8"))
 PATHS = BOX["paths"]
