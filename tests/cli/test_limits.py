@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 
 import pytest
+
 from dwellbench.cli import main as cli
 from dwellbench.cli.commands.limits import _RULES, _SHAPES
 from dwellbench.limits.limit import CURRENT_SHAPES, STATUSES
