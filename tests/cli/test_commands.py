@@ -223,3 +223,19 @@ def test_help_teaches(run: Run) -> None:
         assert status == 0
         assert "dwellbench " + name in out
     assert "Exit status" in run("--help")[1]
+
+
+def test_without_a_command_it_says_what_there_is(run: Run) -> None:
+    for arguments in ((), ("records",)):
+        status, out, err = run(*arguments)
+        assert (status, err) == (0, "")
+        assert "Usage" in out
+        assert "list" in out or "test" in out
+
+
+def test_a_port_with_nothing_plugged_in_is_not_taken_for_the_box(run: Run, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("dwellbench.cli.reach.ports", lambda: [{"url": "/dev/ttyS0", "what": "n/a"}])
+    status, _, err = run("box")
+    assert status == 7
+    assert "No box is connected" in err
+    assert "emu://film" in err

@@ -61,7 +61,12 @@ class Table(click.Group):
         return super().resolve_command(ctx, args)
 
 
-@click.group(cls=Table, epilog=_EPILOG, context_settings={"help_option_names": ["-h", "--help"]})
+@click.group(
+    cls=Table,
+    epilog=_EPILOG,
+    invoke_without_command=True,
+    context_settings={"help_option_names": ["-h", "--help"]},
+)
 @click.version_option(__version__, prog_name="dwellbench")
 @global_options
 @click.pass_context
@@ -72,6 +77,8 @@ def cli(ctx: click.Context, /, **given: Any) -> None:
     """
     ctx.obj = Options()
     take(ctx.obj, given)
+    if ctx.invoked_subcommand is None:
+        click.echo(ctx.get_help())
 
 
 def ready(ctx: click.Context, given: dict[str, Any]) -> Options:

@@ -22,7 +22,9 @@ def connect(options: Options) -> Bench:
 
 
 def _only_port() -> str:
-    found = [port["url"] for port in ports()]
+    found = [
+        port["url"] for port in ports() if port["what"] not in ("", "n/a")
+    ]  # others have nothing plugged in
     if not found:
         raise NoBoxError("No box is connected.", remedy=_HINT)
     if len(found) > 1:

@@ -14,8 +14,9 @@ from dwellbench.errors import UsageError
 from dwellbench.outcome import VERDICTS
 
 
-@click.group("records")
-def command() -> None:
+@click.group("records", invoke_without_command=True)
+@click.pass_context
+def command(ctx: click.Context) -> None:
     """Look into the records: list, show.
 
     \b
@@ -23,6 +24,8 @@ def command() -> None:
       dwellbench records list --verdict unfit --text paper
       dwellbench records show R17 --json
     """
+    if ctx.invoked_subcommand is None:
+        click.echo(ctx.get_help())
 
 
 _LIST = """List records, newest first.
