@@ -112,6 +112,7 @@ TABLE = (
 
 # Later than this, and the supply's enable, which hardware drops after 50 ms, cannot be vouched for.
 _LATE_MS = const(40)
+_BACK_MS = const(-5)  # less than nothing has gone by: the count went back, and every time that is waited for with it
 _SILENT_AFTER = const(2)
 _OPEN_CODE = const(31500)  # 10 kohm pull-up at 1.000 V: above this the thermistor is open
 _SHORT_CODE = const(300)
@@ -161,7 +162,7 @@ class Conditions:
             bits |= self._converters(front)
         if self.ceiling_na and front.shunt_fresh and front.na(front.shunt_code) > self.ceiling_na:
             bits |= OVER_CURRENT
-        if late_ms > _LATE_MS:
+        if late_ms > _LATE_MS or late_ms < _BACK_MS:
             bits |= LATE
         return self._slow(bits, front, supply, now)
 
