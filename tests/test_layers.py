@@ -29,7 +29,8 @@ ORDER = (
     {"wire"},
     {"run", "box"},  # a run is followed through its box
     {"records"},
-    {"bench"},
+    {"recording"},
+    {"bench", "zeroing"},
     {"cli"},
 )
 RANK = {name: rank for rank, names in enumerate(ORDER) for name in names}

@@ -26,6 +26,7 @@ class Plan:
         self.bleed_ms = params.get("bleed_ms", 10000)
         self.recovery_ms = params.get("recovery_ms", 0)
         self.nudge = params.get("nudge", True)
+        self.fixture = params.get("fixture", False)
 
     def most_mv(self):
         """Return the voltage on the part above which the run ends."""

@@ -55,6 +55,7 @@ PARAMS = {
         ("bleed_ms", int, 0, _MS_MOST, False),
         ("recovery_ms", int, 0, _MS_MOST, False),
         ("nudge", bool, 0, 0, False),
+        ("fixture", bool, 0, 0, False),
     ),
 }
 

@@ -14,7 +14,7 @@ from collections.abc import Callable
 from dataclasses import dataclass, field
 from typing import Any
 
-from dwellbench.errors import FaultError
+from dwellbench.errors import FaultError, LinkError, UsageError
 from dwellbench.measure.calibrate import calibrate
 from dwellbench.measure.calibration import Calibration
 from dwellbench.measure.trace import Trace
@@ -25,6 +25,9 @@ from dwellbench.wire.said import fault
 
 _POWERED = ("charge", "dwell", "measure", "form")
 WAKE_S = 180.0  # proving discharge after power-up takes half a minute at most
+
+LID_S = 300.0  # somebody is asked to open the lid
+_PAGE = 180  # letters; with every one escaped a request still fits a line of 512 bytes
 
 
 @dataclass(frozen=True)
@@ -102,6 +105,26 @@ class Box(Conversation):
         except ValueError:
             return None
         return data if isinstance(data, dict) else None
+
+    def write_pages(self, of: str, document: dict[str, Any]) -> None:
+        """Keep a document (`settings` or `calibration`) in the box, which takes it at rest with the lid open only.
+
+        Raises RefusedError with the box's own reason, and LinkError when what it then has is something else.
+        """
+        text = json.dumps(document, separators=(",", ":"))
+        pages = [text[at : at + _PAGE] for at in range(0, len(text), _PAGE)]
+        for page, piece in enumerate(pages):
+            self.ask("settings", {"of": of, "page": page, "pages": len(pages), "text": piece})
+        if self.pages(of) != text:
+            raise LinkError(f"The box did not keep its {of} as it was sent.", remedy="Send it again.")
+
+    def wait_for_open_lid(self, seconds: float = LID_S) -> None:
+        """Wait until the box is at rest with its lid open. UsageError when nobody opens it."""
+        if self.wait_for(lambda now: now["state"] == "rest" and now["lid"] == "open", seconds) is None:
+            raise UsageError(
+                "The lid was not opened, so nothing was written to the box.",
+                remedy="Run it again, and open the lid.",
+            )
 
     # -- waiting
 

@@ -194,7 +194,9 @@ def _unconnected(case: Case, found: list[Finding]) -> Outcome:
     """Nothing was connected, so what the shunt read says nothing of the part."""
     decision = decide(case, [], found, False)
     kept = tuple(
-        finding for finding in found if finding.id in ("open_lead", "uncalibrated", "residual_charge")
+        finding
+        for finding in found
+        if finding.id in ("open_lead", "uncalibrated", "calibration", "residual_charge")
     )
     return Outcome(
         **_stamp(case),

@@ -66,7 +66,9 @@ class Ratings:
 
 @dataclass(frozen=True)
 class Plan:
-    """One run as it is asked of the box. `recovery_s` 0: the rebound is not watched."""
+    """One run as it is asked of the box. `recovery_s` 0: the rebound is not watched. `fixture`: nothing is
+    fitted.
+    """
 
     run_key: str
     volts_V: float
@@ -78,6 +80,7 @@ class Plan:
     bleed_s: float = _BLEED_LEAST_S
     recovery_s: float = 0.0
     nudge: bool = True
+    fixture: bool = False
     low_pct: int = 0
     high_pct: int = 0
     reasons: tuple[str, ...] = ()
@@ -117,6 +120,14 @@ class Plan:
             reasons=(why, why_dwell),
         )
 
+    @classmethod
+    def empty(cls, ratings: Ratings, volts: float, dwell: float) -> Plan:
+        """The empty fixture's own leakage. Raises UsageError for what the box cannot give."""
+        nothing = Part("empty fixture", dielectric="vacuum")
+        target, why = target_volts(nothing, None, ratings, volts)
+        dwell_s, why_dwell = _dwell(nothing, "new", dwell, ratings)
+        return cls(secrets.token_hex(8), target, dwell_s, fixture=True, reasons=(why, why_dwell))
+
     def to_wire(self) -> dict[str, Any]:
         """The parameters of the `run` request, whole numbers in the wire's units."""
         return {
@@ -131,6 +142,7 @@ class Plan:
             "bleed_ms": round(self.bleed_s * 1e3),
             "recovery_ms": round(self.recovery_s * 1e3),
             "nudge": self.nudge,
+            **({"fixture": True} if self.fixture else {}),  # a box of before knows no such parameter
         }
 
     def estimate_s(self) -> float:

@@ -8,6 +8,7 @@ call returns, unless `proven` says otherwise: then the box still holds the lid l
 from __future__ import annotations
 
 from collections.abc import Iterator
+from datetime import UTC, datetime
 from typing import TYPE_CHECKING, Any
 
 from dwellbench.errors import FaultError, LinkError, StoppedError
@@ -31,6 +32,7 @@ class Run:
         self.plan = plan
         self.number = number
         self.estimate_s = estimate_s
+        self.began_utc = datetime.now(UTC).strftime("%Y-%m-%dT%H:%M:%SZ")
         self.rows: list[list[int]] = []
         self.state = "charge"
         self.stage = "zero"
@@ -137,6 +139,7 @@ class Run:
             "fault": self.fault,
             "asked_V": self.plan.volts_V,
             "dwell_asked_s": self.plan.dwell_s,
+            "time_utc": self.began_utc,
         }
         info.update(
             {

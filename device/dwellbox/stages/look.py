@@ -24,6 +24,7 @@ _STALL_MV = const(5000)
 _STALL_RISE_MV = const(50)  # in two seconds, with the whole current flowing: 500 uF would rise 200 mV
 _OPEN_PF = const(20)  # above what an empty fixture has
 _OPEN_PA = const(20000)  # an open lead does not leak: 1 Gohm at 20 V
+_EMPTY_PF = const(100)  # more is a part, and no empty fixture
 
 
 class Look:
@@ -175,6 +176,8 @@ class Look:
         plan = bench.plan
         ratings = bench.ratings
         pf = bench.capacitance_pf
+        if plan.fixture:
+            return ends(END_VALUE_OFF) if pf > _EMPTY_PF else NEXT
         if pf < _OPEN_PF and current_pa < _OPEN_PA:
             return ends(END_OPEN)
         expect = plan.expect_pf

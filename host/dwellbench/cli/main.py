@@ -23,6 +23,7 @@ COMMANDS = {
     "emulate": "emulate",
     "records": "records",
     "limits": "limits",
+    "zero": "zero",
 }
 
 _EPILOG = """

@@ -145,7 +145,7 @@ def calibration(e: Errors, seed: int, unique_id: str, ambient_C: float) -> dict[
         "id": f"{Dice(seed, 'calibration id').bits() >> 32:08x}",
         "box": unique_id,
         "made_utc": "2026-01-05T10:00:00Z",
-        "valid_days": 365,
+        "valid_days": None,  # an emulated box does not drift with the calendar
         "temperature_C": ambient_C,
         "volts": volts("part"),
         "supply": volts("supply"),

@@ -1,7 +1,7 @@
 """What was seen, each with its evidence. Findings do not decide by themselves; the verdict reads them.
 
 Ids: short, open_lead, reversed, intermittent, burst, rising, superlinear, forming, charging, unsettled, clipped,
-residual_charge, fixture, below_series, value_off, estimates_disagree, sag, negative_current, uncalibrated,
+residual_charge, fixture, below_series, value_off, estimates_disagree, sag, negative_current, uncalibrated, calibration, stale_zero,
 interrupted, fault.
 """
 
@@ -199,6 +199,18 @@ def _uncalibrated(case: Case) -> Finding | None:
     )
 
 
+def _calibration(case: Case) -> Finding | None:
+    """The calibration has expired, or is another box's."""
+    told = case.trace.text("calibration_doubt")
+    return None if told is None else Finding("calibration", told)
+
+
+def _stale_zero(case: Case) -> Finding | None:
+    """The empty fixture was measured too long ago."""
+    told = case.trace.text("zero_doubt")
+    return None if told is None else Finding("stale_zero", told)
+
+
 def _charging(case: Case, rows: list[Row]) -> Finding | None:
     """C dV/dt that matters against the hardest limit."""
     leak = case.leakage
@@ -261,6 +273,8 @@ _LOOKS: tuple[Callable[[Case], Finding | None], ...] = (
     _negative,
     _residual,
     _uncalibrated,
+    _calibration,
+    _stale_zero,
 )
 _WEIGHED: tuple[Callable[[Case, list[Row]], Finding | None], ...] = (
     _forming,

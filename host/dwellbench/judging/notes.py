@@ -5,6 +5,8 @@ from __future__ import annotations
 from dwellbench.judging.case import Case
 from dwellbench.judging.say import seconds, si, volts
 from dwellbench.measure.reference import reference_box
+from dwellbench.measure.validity import told_age
+from dwellbench.measure.zero import SAME_VOLTS
 from dwellbench.outcome import Finding
 
 _PLAIN = {
@@ -50,6 +52,7 @@ def notes(case: Case, found: list[Finding]) -> tuple[str, ...]:
         f"Capacitance is a direct-current value: the charge for {volts(case.test_V)}, fast absorption included.",
         f"Total current {seconds(case.estimates.dwell_s or 0.0)} after the voltage was in.",
     ]
+    told += _zero(case)
     if case.part.dielectric in ("ceramic_2", "ceramic"):
         told.append(
             "Class II ceramic loses capacitance under voltage, so the figure is not comparable with a "
@@ -69,6 +72,22 @@ def notes(case: Case, found: list[Finding]) -> tuple[str, ...]:
     if case.esr_ohm is not None:
         told.append(f"Series resistance given by the user: {si(case.esr_ohm, 'ohm')}.")
     return tuple(told)
+
+
+def _zero(case: Case) -> list[str]:
+    """Which zero of the empty fixture was taken off, and how old it was."""
+    zero_V, age_s = case.trace.number("zero_V"), case.trace.number("zero_age_s")
+    ohm = case.trace.number("fixture_ohm")
+    if zero_V is None or ohm is None:
+        return []
+    age = "" if age_s is None else f", {told_age(age_s)} before the test"
+    told = [
+        f"Empty fixture: {si(ohm, 'ohm')} at {volts(zero_V)}, measured {case.trace.text('zero_utc')}{age}."
+    ]
+    asked_V = case.asked_V
+    if asked_V is not None and abs(zero_V - asked_V) > SAME_VOLTS * asked_V:
+        told.append("That zero is of another voltage; its doubt is taken as of one never measured.")
+    return told
 
 
 def _times(case: Case) -> list[str]:

@@ -139,7 +139,9 @@ def _doubtful(case: Case, rows: list[Row], ids: dict[str, str]) -> _Answer:
     if needed_V is not None and (case.valid_to_V or 0.0) * _NEAR < needed_V:
         why = f"Tested at {volts(case.test_V)}, below the place's {volts(needed_V)}."
         if "sag" in ids:
-            again = "Re-form it, let it rest, then test again." if _may_form(case) else "Find what leaks first."
+            again = (
+                "Re-form it, let it rest, then test again." if _may_form(case) else "Find what leaks first."
+            )
             return UNDECIDED, f"{ids['sag']} The place has {volts(needed_V)}.", again
         return UNDECIDED, why, f"Test it at {volts(needed_V)}."
     if "intermittent" in ids:

@@ -16,6 +16,8 @@ from dwellbench.measure.calibration import Calibration, Scale
 from dwellbench.measure.raw import RawTrace
 from dwellbench.measure.reference import code_names, flag_mask, reference_box
 from dwellbench.measure.trace import Bools, Floats, Trace
+from dwellbench.measure.validity import age_s, in_force, lapsed
+from dwellbench.measure.zero import nearest
 
 _CODE_U = 1.0 / sqrt(12.0)  # rectangle of one code
 _LEAST_NOISE_CODE = 0.5
@@ -27,7 +29,9 @@ def calibrate(raw: RawTrace, calibration: Calibration | None = None) -> Trace:
 
     Rows without any reading of part or shunt are left out.
     """
-    calibration = calibration or Calibration.without()
+    calibration, doubt = in_force(
+        calibration or Calibration.without(), _said(raw, "box"), _said(raw, "time_utc")
+    )
     kept = RawTrace(raw.rows[(raw.column("nv") > 0) & (raw.column("ni") > 0)], raw.info)
     box = reference_box()
     shunt, fine = kept.column("shunt"), kept.column("range")
@@ -56,7 +60,7 @@ def calibrate(raw: RawTrace, calibration: Calibration | None = None) -> Trace:
         v_max_V=volts.of(kept.column("vmax")),
         i_min_A=current.of(kept.column("imin")),
         i_max_A=current.of(kept.column("imax")),
-        header=_header(kept, calibration, current),
+        header=_header(kept, calibration, current, doubt),
     )
 
 
@@ -134,19 +138,48 @@ def _zeros(raw: RawTrace) -> dict[tuple[int, int], tuple[float, float]]:
     return found
 
 
-def _header(raw: RawTrace, calibration: Calibration, current: _Currents) -> dict[str, Any]:
+def _said(raw: RawTrace, key: str) -> str | None:
+    value = raw.info.get(key)
+    return None if value is None else str(value)
+
+
+def _fixture(raw: RawTrace, calibration: Calibration) -> dict[str, Any]:
+    """The empty fixture at this run's voltage: its last zero there, else what the calibration says of it."""
+    asked_V = raw.info.get("asked_V")
+    zero = nearest(calibration.zeros, asked_V)
+    if zero is None:
+        return {"fixture_ohm": calibration.fixture_ohm, "u_fixture_rel": calibration.u_fixture_rel}
+    now_utc = _said(raw, "time_utc")
+    why = lapsed(zero.made_utc, zero.valid_h * 3600.0, now_utc)
+    same = asked_V is None or zero.same_volts(asked_V)
+    age = age_s(zero.made_utc, now_utc)
+    told: dict[str, Any] = {
+        "fixture_ohm": zero.ohm,
+        "u_fixture_rel": zero.u_rel_when(why is None and same),
+        "zero_V": zero.volts_V,
+        "zero_utc": zero.made_utc,
+    }
+    if age is not None:
+        told["zero_age_s"] = age
+    if why is not None:
+        told["zero_doubt"] = f"The empty fixture's zero {why}; its doubt is taken as of one never measured."
+    return told
+
+
+def _header(raw: RawTrace, calibration: Calibration, current: _Currents, doubt: str | None) -> dict[str, Any]:
     """What the trace says of box and run."""
     box = reference_box()
     header: dict[str, Any] = {
         "charge_ohm": box.charge_ohm,
         "divider_ohm": box.divider_ohm,
         "bleed_ohm": box.bleed_ohm,
-        "fixture_ohm": calibration.fixture_ohm,
-        "u_fixture_rel": calibration.u_fixture_rel,
+        **_fixture(raw, calibration),
         "u_gain_v": max(scale.u_rel for scale in calibration.volts),
         "u_gain_i": max(scale.u_rel for scale in calibration.amps.values()),
         "calibration": calibration.id,
     }
+    if doubt is not None:
+        header["calibration_doubt"] = doubt
     temperature = part_temperature_C(raw)
     if temperature is not None:
         header["temperature_C"] = temperature

@@ -8,12 +8,13 @@ threshold.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from math import sqrt
 from typing import Any
 
 from dwellbench.errors import UsageError
 from dwellbench.measure.reference import FIXTURE_OHM, FIXTURE_U_REL, reference_box
+from dwellbench.measure.zero import Zero
 
 SCHEMA = 1
 NOMINAL = "nominal"
@@ -35,7 +36,10 @@ class Scale:
 
 @dataclass(frozen=True)
 class Calibration:
-    """Scales of one box. `volts` and `supply` by range (0 wide, 1 fine), `amps` by (shunt 0..2, range)."""
+    """Scales of one box. `volts` and `supply` by range (0 wide, 1 fine), `amps` by (shunt 0..2, range).
+
+    `zeros`: the empty fixture as it was measured, one for each voltage; `fixture_ohm` stands where there is none.
+    """
 
     id: str
     volts: tuple[Scale, Scale]
@@ -47,6 +51,7 @@ class Calibration:
     made_utc: str | None = None
     valid_days: float | None = None
     temperature_C: float | None = None
+    zeros: tuple[Zero, ...] = ()
 
     @property
     def nominal(self) -> bool:
@@ -84,6 +89,9 @@ class Calibration:
     def _read(cls, data: Mapping[str, Any]) -> Calibration:
         if data["schema"] != SCHEMA:
             raise ValueError(f"schema {data['schema']!r} is not known")
+        zeros = tuple(Zero.from_json(zero) for zero in data.get("zeros", []))
+        if "volts" not in data and data["id"] == NOMINAL:
+            return replace(cls.without(), box=data.get("box"), zeros=zeros)
         box = reference_box()
         ranges = {round(volts * 1e3): fine for fine, volts in enumerate(box.ranges_V)}
         shunts = {round(ohm): index for index, ohm in enumerate(box.shunts_ohm)}
@@ -107,6 +115,7 @@ class Calibration:
             made_utc=data.get("made_utc"),
             valid_days=data.get("valid_days"),
             temperature_C=data.get("temperature_C"),
+            zeros=zeros,
         )
 
 

@@ -35,6 +35,8 @@ HEADER_NUMBERS = (
     "short_mv",
     "short_na",
     "residual_mv",
+    "zero_V",
+    "zero_age_s",
 )
 """Header keys that must be numbers when they are there."""
 

@@ -101,6 +101,17 @@ class Store:
                 raise
         return RunWriter(self._connection, self.path, int(cursor.lastrowid or 0), lock)
 
+    def keep_calibration(self, box: dict[str, Any], calibration: dict[str, Any]) -> None:
+        """Keep a calibration that no run has used yet. `box` has box and model."""
+        with explained(self.path):
+            self._connection.execute("BEGIN IMMEDIATE")
+            try:
+                self._calibration(self._box(box), calibration)
+                self._connection.execute("COMMIT")
+            except BaseException:
+                self._connection.execute("ROLLBACK")
+                raise
+
     def _box(self, box: dict[str, Any]) -> int:
         self._connection.execute(
             "INSERT INTO box (unique_id, model, first_seen_utc) VALUES (?, ?, ?) ON CONFLICT (unique_id) DO NOTHING",
