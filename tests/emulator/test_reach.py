@@ -195,7 +195,7 @@ def served(tmp_path: Path) -> Iterator[Any]:
 def test_a_run_over_tcp_and_a_client_that_goes_and_comes_back(served: Any) -> None:
     _, url = served("--tcp", "127.0.0.1:0")
     with open_box(url) as box:
-        assert box._link.scale == 40
+        assert box.identity.hello["time_scale"] == "40"
         boot = box.identity.boot
     with open_box(url) as box:
         assert box.identity.boot == boot
@@ -300,3 +300,30 @@ def test_a_state_file_of_another_box_is_refused(tmp_path: Path) -> None:
     serial.serial_for_url(f"emu://film?seed=3&state={kept}").close()
     with pytest.raises(UsageError, match="does not keep this emulated box"):
         Opening("film", 4, kept).make()
+
+
+@pytest.mark.parametrize("chunk", [1, 7, 10_000])
+def test_read_until_is_the_base_class_own_only_faster(port: Any, chunk: int) -> None:
+    twin = serial.serial_for_url("emu://film?seed=3", timeout=1)
+    for one in (port, twin):
+        one.write(HELLO * 2)
+    for _ in range(6):
+        ours, theirs = port.read_until(b"\n", chunk), serial.SerialBase.read_until(twin, b"\n", chunk)
+        assert ours == theirs
+        assert port.clock() == pytest.approx(twin.clock(), abs=0.011)
+    assert port.read_until(b',"', 9) == serial.SerialBase.read_until(twin, b',"', 9)
+    twin.close()
+
+
+def test_read_until_that_may_not_wait(port: Any) -> None:
+    port.wait(1.0)
+    port.timeout = 0
+    begin = port.clock()
+    assert port.read_until(b"\n") == b""
+    assert port.clock() - begin == pytest.approx(0.005, abs=1e-6)
+    port.timeout = 0.5
+    port.write(HELLO)
+    assert port.read_until(b"\n", 3) == b'{"j'
+    assert port.read_until(b"\n").endswith(b"}\n")
+    assert port.read_until(b"\n") == b""
+    assert port.clock() - begin == pytest.approx(0.7, abs=0.1)

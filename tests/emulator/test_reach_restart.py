@@ -18,7 +18,13 @@ from dwellbench.errors import UsageError
 from dwellbench.wire.core import Answer, Client, Event
 
 PART = '[[part]]\nlabel = "A"\ncapacitance_F = 1e-6\n'
-PLAN: dict[str, object] = {"run_key": "k", "volts_mv": 400_000, "dwell_ms": 60_000, "expect_pf": 1_000_000, "nudge": False}
+PLAN: dict[str, object] = {
+    "run_key": "k",
+    "volts_mv": 400_000,
+    "dwell_ms": 60_000,
+    "expect_pf": 1_000_000,
+    "nudge": False,
+}
 WAKE_S = 40  # discharge is proven after a start: the worst-case time on the bleed, and to spare
 Make = Callable[..., "Driven"]
 

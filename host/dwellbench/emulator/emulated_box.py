@@ -57,6 +57,8 @@ class EmulatedBox:
         if world.link_silent:
             self.link.drop()
         self.step()
+        if world.link_silent:
+            self.link.drop()  # nor what was put just now: a host that waits reads between the periods
 
     def idle(self) -> None:
         """A period in which nothing steps: outputs stay, nothing is pumped or fed."""
