@@ -22,6 +22,7 @@ from dwellbench.judging.verdict import decide
 from dwellbench.limits.decide import Thresholds
 from dwellbench.limits.demands import grid_shift_V
 from dwellbench.limits.place import ANY, Place
+from dwellbench.measure.budget import Budget, budgets_of
 from dwellbench.measure.csv_read import read_csv
 from dwellbench.measure.estimates import estimate
 from dwellbench.measure.trace import Trace
@@ -161,6 +162,7 @@ def _measured(case: Case) -> Outcome:
     decision = decide(case, rows, found, bool(suits))
     shown = [*rows, *(row for row in series if case.place is not None)]
     estimates = case.estimates
+    shift = _grid_shift(case)
     return Outcome(
         **_stamp(case),
         verdict=decision.verdict,
@@ -184,9 +186,10 @@ def _measured(case: Case) -> Outcome:
         absorption_ratio=estimates.absorption_ratio,
         polarisation_index=estimates.polarisation_index,
         recovery_percent=estimates.recovery_percent,
-        grid_shift_V=_grid_shift(case),
+        grid_shift_V=shift,
         assumed=assumed(case),
         notes=notes(case, found),
+        budgets=_budgets(case, shift),
     )
 
 
@@ -221,6 +224,15 @@ def _complete(case: Case) -> bool:
     if case.asked_s is not None:
         return held_s >= _DWELL_GRACE * case.asked_s
     return case.end == "complete"
+
+
+def _budgets(case: Case, shift: Quantity | None) -> dict[str, Budget]:
+    """What made up each stated uncertainty; the grid's shift has the insulation's sources."""
+    made = budgets_of(case.estimates)
+    ohm = case.estimates.insulation_ohm()
+    if shift is not None and shift.u is not None and ohm is not None and ohm.u:
+        made["grid_shift_V"] = tuple(line.scaled(-shift.u / ohm.u) for line in made["insulation_ohm"])
+    return made
 
 
 def _grid_shift(case: Case) -> Quantity | None:

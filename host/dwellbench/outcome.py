@@ -11,6 +11,7 @@ from dataclasses import dataclass, field, replace
 from typing import Any
 
 from dwellbench.limits.decide import FIT, UNDECIDED, UNFIT, VERDICTS
+from dwellbench.measure.budget import Budget
 from dwellbench.part import Part
 from dwellbench.quantity import Quantity
 
@@ -132,6 +133,7 @@ class Outcome:
     calibration: str | None = None
     simulated: bool = False
     schema: int = field(default=SCHEMA)
+    budgets: dict[str, Budget] = field(default_factory=dict, compare=False, repr=False)
 
     @property
     def exit_status(self) -> int:
@@ -146,8 +148,8 @@ class Outcome:
         """The same outcome with members such as `record`, `run`, `time_utc` or `box` filled in."""
         return replace(self, **members)
 
-    def as_json(self) -> dict[str, Any]:
-        """The document as JSON values, members in the interface's order."""
+    def as_json(self, *, budgets: bool = False) -> dict[str, Any]:
+        """The document as JSON values, members in the interface's order; `budgets` only when they are asked for."""
         document: dict[str, Any] = {name: getattr(self, name) for name in _HEAD}
         document["part"] = self.part.as_json()
         document.update(
@@ -165,6 +167,10 @@ class Outcome:
             valid_to_V=self.valid_to_V, not_tested=list(self.not_tested), to_decide=self.to_decide
         )
         document.update(end=self.end, fault=self.fault, assumed=list(self.assumed), notes=list(self.notes))
+        if budgets:
+            document["budgets"] = {
+                name: [line.as_json() for line in rows] for name, rows in self.budgets.items()
+            }
         return document
 
     @classmethod

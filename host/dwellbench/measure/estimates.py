@@ -15,7 +15,14 @@ from dwellbench.measure.estimate import Estimate
 from dwellbench.measure.events import Events, events
 from dwellbench.measure.leakage import Leakage, dwell_begin_s, read_leakage
 from dwellbench.measure.look import LowLeak, low_leak
-from dwellbench.measure.ratios import ABSORPTION_S, POLARISATION_S, recovery_percent, resistance_ratio
+from dwellbench.measure.ratios import (
+    ABSORPTION_S,
+    POLARISATION_S,
+    Recovery,
+    ratio_of,
+    ratio_readings,
+    recovery,
+)
 from dwellbench.measure.settled import Settled, settled
 from dwellbench.measure.trace import Circuit, Trace, circuit_of
 from dwellbench.quantity import COVERAGE_95, Quantity
@@ -68,6 +75,10 @@ class Estimates:
     absorption_ratio: Quantity | None
     polarisation_index: Quantity | None
     recovery_percent: Quantity | None
+    u_absorbed_F: float = 0.0  # of the capacitance's own doubt, the part that is absorption
+    absorption_readings: tuple[Leakage, Leakage] | None = None
+    polarisation_readings: tuple[Leakage, Leakage] | None = None
+    recovery: Recovery | None = None
 
     @property
     def u_gain(self) -> float:
@@ -155,6 +166,11 @@ def estimate(trace: Trace, expect_F: float | None = None, dielectric: str | None
     end_s = _dwell_s(trace)
     value_F = combined.value if combined is not None else None
     volts_V = leak.volts_V if leak is not None else 0.0
+    early, late = (
+        ratio_readings(trace, circuit, mask, value_F, times_s, end_s or 0.0)
+        for times_s in (ABSORPTION_S, POLARISATION_S)
+    )
+    rebound = recovery(trace, circuit, value_F, volts_V)
     return Estimates(
         circuit=circuit,
         settled=mask,
@@ -167,9 +183,13 @@ def estimate(trace: Trace, expect_F: float | None = None, dielectric: str | None
         low_leak=low,
         events=events(trace, mask),
         dwell_s=end_s,
-        absorption_ratio=resistance_ratio(trace, circuit, mask, value_F, ABSORPTION_S, end_s or 0.0),
-        polarisation_index=resistance_ratio(trace, circuit, mask, value_F, POLARISATION_S, end_s or 0.0),
-        recovery_percent=recovery_percent(trace, circuit, value_F, volts_V),
+        absorption_ratio=ratio_of(early),
+        polarisation_index=ratio_of(late),
+        recovery_percent=None if rebound is None else rebound.quantity,
+        u_absorbed_F=abs(value_F or 0.0) * _absorbed(dielectric),
+        absorption_readings=early,
+        polarisation_readings=late,
+        recovery=rebound,
     )
 
 

@@ -21,15 +21,13 @@ from dwellbench.measure.settled import Settled
 from dwellbench.measure.trace import Bools, Circuit, Floats, Trace
 
 LEAST_EXPONENT = 0.6
-_ABSORPTION_U = 0.5
+ABSORPTION_U = 0.5
 _LEAST_ROWS = 5
 _SHARE = 0.15  # of the time at voltage, its end, is averaged
 _WINDOW_S = (3.0, 15.0)
 _SHAPE_U = 0.3  # of what a row is brought along the decay: the shape is not quite 1/t
 _RISES = 0.03  # t di/dt as a share of the current, above which it counts as rising
-_BEAT_ROWS = (
-    5.0  # rows that do not scatter independently: ripple beats with the sampling over about this many
-)
+BEAT_ROWS = 5.0  # rows that do not scatter independently: ripple beats with the sampling over about this many
 _SLOPE_FROM = 0.5  # the slope is taken over the last half of the dwell
 _DRIFT_V_PER_S = 1e-4  # of the warm supply: what C dV/dt may hide below the voltage's own noise
 _LOUD = 6.0  # deviations of a row from its neighbours' median above which it is a burst, not noise
@@ -58,6 +56,7 @@ class Leakage:
     rises: bool  # beyond noise, and by more than it should stand still
     shunt_ohm: float
     rows: int
+    u_zero_A: float = 0.0  # of `u_read_A`, the part that is the zero's
 
     @property
     def through_A(self) -> float:
@@ -77,7 +76,7 @@ class Leakage:
     @property
     def u_conduction_A(self) -> float:
         """u^2 = noise^2 + zero^2 + (half the absorption)^2 + (C drift)^2 + (fixture)^2."""
-        return hypot(self.u_through_A, hypot(_ABSORPTION_U * self.absorbed_A, self.u_absorbed_A))
+        return hypot(self.u_through_A, hypot(ABSORPTION_U * self.absorbed_A, self.u_absorbed_A))
 
     @property
     def least_A(self) -> float:
@@ -141,6 +140,7 @@ def _read(
         rises=-decay.part_A > max(3.0 * decay.u_part_A, _RISES * abs(current)),
         shunt_ohm=float(trace.shunt_ohm[quiet][-1]),
         rows=int(quiet.sum()),
+        u_zero_A=float(trace.u_offset_A[quiet].max()),
     )
 
 
@@ -158,12 +158,12 @@ class _Decay:
         rows = _late(trace, settled, middle_s, until_s)
         rows &= ~bursts(trace.i_shunt_A, rows)
         fit = line(self.shape[rows], trace.i_shunt_A[rows])
-        self.part_A, self.u_part_A = fit.slope, fit.u_slope * sqrt(_BEAT_ROWS)
+        self.part_A, self.u_part_A = fit.slope, fit.u_slope * sqrt(BEAT_ROWS)
 
     def at_end(self, amps: Floats, rows: Bools) -> tuple[float, float]:
         """The current at the end: the mean of `rows`, each brought there along the decay; and its uncertainty."""
         brought = amps[rows] - self.part_A * self.shape[rows]
-        u_mean = float(np.std(brought)) * sqrt(_BEAT_ROWS / brought.size)
+        u_mean = float(np.std(brought)) * sqrt(BEAT_ROWS / brought.size)
         way = abs(float(np.mean(self.shape[rows])))
         return float(np.mean(brought)), hypot(u_mean, way * hypot(self.u_part_A, _SHAPE_U * self.part_A))
 

@@ -8,6 +8,7 @@ from typing import Any
 import click
 
 from dwellbench.cli import say
+from dwellbench.cli.budget import show_budgets
 from dwellbench.cli.commands.test import chosen, tell_part
 from dwellbench.cli.context import global_options
 from dwellbench.cli.main import ready
@@ -41,6 +42,7 @@ Exit status: 0 fit, 3 unfit, 4 undecided, 2 wrong input.
 @click.option("--grade", type=click.Choice(GRADES), default="new", show_default=True, help="Which limits.")
 @click.option("--esr", type=float, metavar="OHM", help="Series resistance measured elsewhere.")
 @click.option("--section", type=int, metavar="N", help="Which section of a can, counted from 1.")
+@click.option("--budget", is_flag=True, help="What makes up the uncertainty of every quantity.")
 @global_options
 @click.pass_context
 def command(ctx: click.Context, /, **given: Any) -> int:
@@ -60,8 +62,10 @@ def command(ctx: click.Context, /, **given: Any) -> int:
         trace, part, role, grade=given["grade"], thresholds=options.thresholds, esr_ohm=given["esr"]
     )
     if options.json:
-        options.document(outcome.as_json())
+        options.document(outcome.as_json(budgets=given["budget"]))
     else:
         for line in say.lines(outcome):
             options.say(line)
+        if given["budget"]:
+            show_budgets(options, outcome)
     return outcome.exit_status

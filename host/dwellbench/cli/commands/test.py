@@ -9,6 +9,7 @@ import click
 
 from dwellbench import bench
 from dwellbench.cli import say
+from dwellbench.cli.budget import show_budgets
 from dwellbench.cli.context import Options, global_options
 from dwellbench.cli.main import ready
 from dwellbench.cli.prompts import ask_ready
@@ -77,6 +78,7 @@ unusable, 130 stopped by you after proven discharge.
     is_flag=True,
     help="Show plan, voltage, time and limits; nothing is energised, no box is needed.",
 )
+@click.option("--budget", is_flag=True, help="What makes up the uncertainty of every quantity.")
 @click.option("--yes", is_flag=True, help="The part is in and the lid is closed: do not ask.")
 @global_options
 @click.pass_context
@@ -115,10 +117,12 @@ def command(ctx: click.Context, /, **given: Any) -> int:
                 may_end_early=auto,
             )
     if options.json:
-        options.document(outcome.as_json())
+        options.document(outcome.as_json(budgets=given["budget"]))
     else:
         for line in say.lines(outcome):
             options.say(line)
+        if given["budget"]:
+            show_budgets(options, outcome)
         options.say("Fit a shorting wire before you lift the part out, and store it shorted.")
     return outcome.exit_status
 
