@@ -179,6 +179,18 @@ def test_the_stop_button_held_at_power_up_leads_there_too(make: Make) -> None:
     assert isinstance(host.ask("hello"), Answer)
 
 
+def test_pressed_while_the_controller_is_reset_it_does_not(make: Make) -> None:
+    host = make(PART + fault("stop_pressed", 8.0, run=1) + fault("controller_reset", 8.0, run=1)).go(WAKE_S)
+    host.ask("hello")
+    assert isinstance(host.ask("run", PLAN), Answer)
+    while host.box.resets == 0:
+        host.go(0.005)
+    host.go(WAKE_S)
+    assert not host.box.plain
+    assert host.status()["state"] == "lockout"
+    assert abs(host.box.world.truth.part_V) < 30
+
+
 def test_a_write_to_flash_holds_the_loop_and_not_the_world(make: Make) -> None:
     host = make(PART)
     box = host.box

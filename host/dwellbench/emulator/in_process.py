@@ -10,7 +10,7 @@ from dwellbench.emulator.emulated_box import EmulatedBox
 from dwellbench.emulator.link_fifo import LinkFifo
 from dwellbench.emulator.loader import Firmware
 from dwellbench.emulator.reference import bits
-from dwellbench.emulator.world import NO_CONVERSION
+from dwellbench.emulator.world import CAUSE_POWER, NO_CONVERSION
 
 _STOP = bits("inputs")["stop"]
 
@@ -97,7 +97,7 @@ class InProcessBox(EmulatedBox):
     def start(self) -> None:
         """Build the controller anew, as after a reset: RAM is gone."""
         self.board = SimulatedBoard(self)
-        if self.board.inputs() & _STOP:
+        if self.cause == CAUSE_POWER and self.board.inputs() & _STOP:
             self.to_plain()
             return
         firmware = Firmware(assets.device())
