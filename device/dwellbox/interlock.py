@@ -112,7 +112,8 @@ TABLE = (
 
 # Later than this, and the supply's enable, which hardware drops after 50 ms, cannot be vouched for.
 _LATE_MS = const(40)
-_BACK_MS = const(-5)  # less than nothing has gone by: the count went back, and every time that is waited for with it
+# Less than nothing has gone by: the count went back, and every time that is waited for with it.
+_BACK_MS = const(-5)
 _SILENT_AFTER = const(2)
 _OPEN_CODE = const(31500)  # 10 kohm pull-up at 1.000 V: above this the thermistor is open
 _SHORT_CODE = const(300)
