@@ -1,27 +1,31 @@
-"""One box over the real wire: the real firmware on an emulated box, faults and lost links included."""
+"""One box over the real wire: the real firmware on an emulated box, from hello to the end of a run."""
 
 from __future__ import annotations
 
 import json
 import os
 import threading
+import time
 from collections.abc import Iterator
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
 import pytest
-from tests.helpers import FILM, FILM_1U, OPEN, SHORT, fault, plan, ready, scenario, truth, world
+from tests.helpers import FILM, OPEN, SHORT, fault, plan, ready, scenario, truth
 
 from dwellbench.bench import Bench, open_box
+from dwellbench.emulator.opening import Opening
+from dwellbench.emulator.outlet_pty import Pty
+from dwellbench.emulator.serve import serve
 from dwellbench.errors import (
-    FaultError,
     LinkError,
     NoBoxError,
     RefusedError,
-    StoppedError,
     UsageError,
     WrongBoxError,
 )
+from dwellbench.wire.core import seal
 from dwellbench.wire.wire_log import read_log
 
 
@@ -103,7 +107,11 @@ class Peer:
         (b"\xff\x00\n" * 400, WrongBoxError),
     ],
 )
-def test_something_that_is_not_a_box(answer: bytes, error: type[LinkError]) -> None:
+def test_something_that_is_not_a_box(
+    answer: bytes, error: type[LinkError], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    if answer:
+        monkeypatch.setattr("dwellbench.wire.conversation.HELLO_S", 1.1)
     peer = Peer(answer)
     try:
         with pytest.raises(error) as caught:
@@ -113,12 +121,41 @@ def test_something_that_is_not_a_box(answer: bytes, error: type[LinkError]) -> N
         peer.close()
 
 
-def test_another_major_version_is_refused(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    from dwellbench.wire import conversation as box_module
+def hello(**changes: object) -> bytes:
+    """What a peer answers that says all is well, whatever is asked: the first request of a host has id 1."""
+    result = {"protocol": [1, 0], "firmware": "0", "build": "0" * 8, "model": "m", "box": "0" * 16, **changes}
+    return seal({"jsonrpc": "2.0", "result": result, "id": 1})
 
-    monkeypatch.setattr(box_module, "MAJOR", 2)
-    with pytest.raises(WrongBoxError, match="version 1 of the wire"):
-        open_box("emu://film")
+
+@pytest.mark.parametrize("members", [{}, {"ratings": "other than ours", "box": None}])
+def test_another_major_version_is_refused_whatever_else_it_says(members: dict[str, object]) -> None:
+    peer = Peer(hello(protocol=[2, 7], **members))
+    try:
+        with pytest.raises(WrongBoxError, match="version 2 of the wire, this host version 1"):
+            open_box(peer.name)
+    finally:
+        peer.close()
+
+
+@pytest.mark.parametrize("speed", [0.5, 20.0])
+def test_signs_of_life_go_out_by_the_box_s_own_time(tmp_path: Path, speed: float) -> None:
+    """Two of its seconds without one end a run, whatever its pace."""
+    outlet, over = Pty(tmp_path / "bench"), threading.Event()
+    served = Opening.from_url("emu://film?seed=3").make(time_scale=speed)
+    server = threading.Thread(target=serve, args=(served, outlet, speed, over.is_set))
+    server.start()
+    try:
+        with open_box(str(tmp_path / "bench"), wire_log=tmp_path / "log") as box:
+            box.keepalive = True
+            begin, wall = box.clock(), time.monotonic()
+            box.rest(1.2)
+            assert box.clock() - begin == pytest.approx((time.monotonic() - wall) * speed, rel=0.1)
+    finally:
+        over.set()
+        server.join(10)
+    signs = [at for at, way, line in read_log(tmp_path / "log") if way == ">" and b"keepalive" in line]
+    assert len(signs) >= 2
+    assert max(later - one for one, later in pairwise(signs)) < 0.6 + 0.02 * speed
 
 
 # ---- running
@@ -223,160 +260,6 @@ def test_a_second_run_while_one_is_under_way_is_refused(film: Bench) -> None:
     list(run)
 
 
-# ---- stopping
-
-
-def test_ctrl_c_stops_only_after_proven_discharge(film: Bench) -> None:
-    run = film.start(plan(film, dwell=60.0))
-    with pytest.raises(StoppedError) as caught:
-        for notice in _interrupt_at(run, "dwell"):
-            assert notice
-    assert caught.value.exit == 130
-    assert run.end == "aborted"
-    assert run.proven
-    assert abs(truth(film).part_V) < 30
-    assert [notice.method for notice in run.unseen()].count("done") == 1
-
-
-def _interrupt_at(run: Any, state: str) -> Iterator[Any]:
-    """Iterate a run; the keyboard interrupts it in `state`, in the middle of waiting."""
-    original = run._box.next_event
-    fired = []
-
-    def interrupted(timeout_s: float) -> Any:
-        if run.state == state and not fired:
-            fired.append(True)
-            raise KeyboardInterrupt
-        return original(timeout_s)
-
-    run._box.next_event = interrupted
-    yield from run
-
-
-# ---- a lost link
-
-
-class Cable:
-    """Stands between a link and its port; may be pulled for some virtual seconds, losing what is under way."""
-
-    def __init__(self, box: Bench) -> None:
-        self.link = box._link
-        self.port = box._link._port
-        self.pulled = False
-
-    def pull(self) -> None:
-        self.pulled = True
-        self.port.box.link.drop()
-        self.port.box.link.attach(False)
-
-    def put_back(self) -> None:
-        self.pulled = False
-        self.port.box.link.attach(True)
-
-
-@pytest.mark.parametrize("gone_s", [0.4, 0.9, 1.4])
-def test_a_link_cut_in_mid_run_and_restored_loses_no_sample(
-    film: Bench, monkeypatch: pytest.MonkeyPatch, gone_s: float
-) -> None:
-    cable = Cable(film)
-    read, write = cable.link.read, cable.link.write
-
-    def cut_read(timeout_s: float) -> bytes:
-        if cable.pulled:
-            raise LinkError("pulled")
-        return read(timeout_s)
-
-    def cut_write(data: bytes) -> None:
-        if cable.pulled:
-            raise LinkError("pulled")
-        write(data)
-
-    def reopened() -> Any:
-        if cable.pulled:
-            cable.port.wait(gone_s)
-            cable.put_back()
-            raise NoBoxError("still gone")
-        monkeypatch.setattr("dwellbench.wire.conversation.open_link", lambda url, log: cable.link)
-        return original()
-
-    original = film._reopened
-    monkeypatch.setattr(cable.link, "read", cut_read)
-    monkeypatch.setattr(cable.link, "write", cut_write)
-    monkeypatch.setattr(cable.link, "close", lambda: None)
-    monkeypatch.setattr(film, "_reopened", reopened)
-    monkeypatch.setattr(film, "_pause", lambda seconds: None)
-    run = film.start(plan(film, dwell=8.0))
-    numbers = []
-    for notice in run:
-        numbers.append(notice.n)
-        if len(numbers) in (60, 130):
-            cable.pull()
-    assert (run.end, film.lost) == ("complete", 0)
-    assert numbers == list(range(numbers[0], numbers[0] + len(numbers)))
-
-
-@pytest.mark.parametrize(("body", "marking"), [(FILM, "47n 630V film"), (FILM_1U, "1uF 630V film")])
-def test_a_host_that_goes_silent_leaves_a_discharged_part_within_two_and_a_half_seconds(
-    tmp_path: Path, body: str, marking: str
-) -> None:
-    with ready(scenario(tmp_path, body) + "?seed=5") as box:
-        run = box.start(plan(box, marking, dwell=60.0))
-        for notice in run:
-            if notice.method == "state" and notice.params["state"] == "dwell":
-                break
-        box.rest(3.0)
-        box.keepalive = False
-        assert truth(box).part_V > 350
-        begin = box.clock()
-        while truth(box).part_V > 30 and box.clock() - begin < 10:
-            world(box)
-            box._link._port.wait(0.005)
-        assert box.clock() - begin <= 2.5
-        box._link._port.wait(20)
-        assert box.status()["state"] == "rest"
-        list(run)
-        assert run.end == "link_lost"
-
-
-# ---- faults
-
-
-def test_the_lid_opened_in_a_run_locks_out_until_acknowledged(tmp_path: Path) -> None:
-    url = scenario(tmp_path, FILM_1U, extra=fault("lid_open", 10.0, for_s=4.0)) + "?seed=5"
-    with ready(url) as box:
-        run = box.start(plan(box, "1uF 630V film", dwell=20.0))
-        list(run)
-        assert run.end == "fault"
-        assert run.fault == "lid_open"
-        assert run.proven
-        with pytest.raises(FaultError) as caught:
-            box.start(plan(box))
-        assert caught.value.exit == 6
-        box.wait_for(lambda now: now["lid"] == "closed", 60.0)
-        box.acknowledge()
-        assert box.status()["state"] == "rest"
-        assert not truth(box).hurt
-
-
-@pytest.mark.parametrize("kind", ["controller_reset", "controller_hung"])
-def test_a_controller_that_is_reset_in_a_run_says_so_and_is_safe(tmp_path: Path, kind: str) -> None:
-    url = scenario(tmp_path, FILM_1U, extra=fault(kind, 10.0, for_s=5.0)) + "?seed=5"
-    with ready(url) as box:
-        run = box.start(plan(box, "1uF 630V film", dwell=20.0))
-        with pytest.raises(FaultError, match="restarted"):
-            list(run)
-        box._link._port.wait(40)
-        status = box.status()
-        assert (status["state"], status["fault"]) == ("lockout", "reset_in_run")
-        with pytest.raises(RefusedError, match="not accounted for") as caught:
-            box.acknowledge()
-        assert "--shorted" in caught.value.remedy
-        box.acknowledge(shorted=True)
-        assert box.status()["state"] == "rest"
-        assert abs(truth(box).part_V) < 30
-        assert not truth(box).hurt
-
-
 # ---- what the box keeps
 
 
@@ -398,18 +281,6 @@ def test_a_state_file_keeps_the_box_between_openings(tmp_path: Path) -> None:
         assert box.clock() > now_s
 
 
-@pytest.mark.parametrize("at_s", [1.0, 2.5, 5.0, 7.0, 9.0])
-@pytest.mark.parametrize(("body", "marking"), [(FILM, "47n 630V film"), (FILM_1U, "1uF 630V film")])
-def test_a_charge_relay_that_dies_is_a_fault_whenever_it_dies(
-    tmp_path: Path, body: str, marking: str, at_s: float
-) -> None:
-    with ready(scenario(tmp_path, body, extra=fault("charge_relay_dead", at_s)) + "?seed=5") as box:
-        run = box.start(plan(box, marking, dwell=10.0))
-        list(run)
-        assert run.fault in ("way_down", "divider", "no_rise", "second_bleed")
-        assert not truth(box).hurt
-
-
 def test_an_event_that_never_comes_whole_is_lost_alone(film: Bench, monkeypatch: pytest.MonkeyPatch) -> None:
     """A firmware that sent what the schema does not allow: the host goes on without that one event."""
     from dwellbench.wire.core import Junk
@@ -420,7 +291,6 @@ def test_an_event_that_never_comes_whole_is_lost_alone(film: Bench, monkeypatch:
         return [Junk(b"", "spoilt") if getattr(one, "n", None) == 40 else one for one in receive(data)]
 
     monkeypatch.setattr(film._client, "receive", spoilt)
-    monkeypatch.setattr("dwellbench.wire.core.Notice.n", property(lambda self: int(self.params["n"])))
     run = film.start(plan(film))
     numbers = [notice.n for notice in run]
     assert (run.end, film.lost) == ("complete", 1)

@@ -6,8 +6,9 @@ The record is opened before the box is asked to run, and rows go into it as they
 
 from __future__ import annotations
 
-from dataclasses import asdict
+from dataclasses import asdict, dataclass, field
 from datetime import UTC, datetime
+from functools import cached_property
 from pathlib import Path
 from typing import Any, Protocol
 
@@ -21,9 +22,11 @@ from dwellbench.measure.calibration import Calibration
 from dwellbench.outcome import Outcome
 from dwellbench.part import Part
 from dwellbench.plan import Plan
+from dwellbench.recording import Recording
 from dwellbench.records import RunWriter, Store
 from dwellbench.run import Run, stopped, unproven
 from dwellbench.wire.core import Notice
+from dwellbench.wire.held import held
 from dwellbench.wire.wire_log import WireLog
 
 LOOKS = ("sound", "bulged", "leaking", "cracked", "burnt", "corroded")
@@ -79,87 +82,73 @@ def test_part(
     record, if there is a store, is closed with what had been measured in every case.
     """
     plan = plan or Plan.make(part, place, box.ratings, grade=grade)
-    document = box.calibration()
-    calibration = None if document is None else Calibration.from_json(document)
-    began = datetime.now(UTC).strftime("%Y-%m-%dT%H:%M:%SZ")
     role = role or (place.role if place else None)
-    writer = _open(store, box, part, role, grade, plan, document, label, note, began)
+    job = _Job(part, place, plan, grade, role, thresholds, esr_ohm, box.calibration())
+    recording = Recording(None)
+    ender = _Ender(box, job) if may_end_early else None
     run: Run | None = None
     try:
+        with held():
+            recording = Recording(None if store is None else _begin(store, box, job, label, note))
         run = box.start(plan)
         if watcher is not None:
             watcher.began(plan, run)
-        _follow(
-            run,
-            writer,
-            watcher,
-            _Ender(box, part, place, grade, calibration, thresholds) if may_end_early else None,
-        )
+        _follow(run, recording, watcher, ender)
     except BaseException as error:
         reason = _made_safe(run, error)
-        _interrupted(writer, run, reason)
+        recording.interrupted(run, reason)
+        if run is not None:
+            run.carried_by(reason)
         if reason is not error:
             raise reason from None
         raise
-    outcome = _judged(run, part, place, grade, calibration, plan, thresholds, esr_ohm)
-    outcome = outcome.stamped(**_stamps(box, run, document, role, began, writer))
-    if writer is not None:
-        writer.end(run.end, run.fault, outcome.as_json())
+    outcome = _judged(run, job).stamped(**_stamps(box, run, job, recording.name))
+    recording.ended(run, outcome.as_json())
     return outcome
 
 
-def _open(
-    store: Store | None,
-    box: Box,
-    part: Part,
-    role: str | None,
-    grade: str,
-    plan: Plan,
-    calibration: dict[str, Any] | None,
-    label: str | None,
-    note: str | None,
-    began: str,
-) -> RunWriter | None:
-    if store is None:
-        return None
+@dataclass(frozen=True)
+class _Job:
+    """What is to be found out, and with what."""
+
+    part: Part
+    place: Place | None
+    plan: Plan
+    grade: str
+    role: str | None
+    thresholds: Thresholds | None
+    esr_ohm: float | None
+    document: dict[str, Any] | None  # the box's calibration as it keeps it
+    began_utc: str = field(default_factory=lambda: datetime.now(UTC).strftime("%Y-%m-%dT%H:%M:%SZ"))
+
+    @cached_property
+    def calibration(self) -> Calibration | None:
+        return None if self.document is None else Calibration.from_json(self.document)
+
+
+def _begin(store: Store, box: Box, job: _Job, label: str | None, note: str | None) -> RunWriter:
     identity = box.identity
     return store.begin_run(
-        run_key=plan.run_key,
-        part=part.as_json(),
-        role=role,
-        grade=grade,
-        plan=asdict(plan),
-        box={
-            "box": identity.box,
-            "model": identity.model,
-            "firmware": identity.firmware,
-            "build": identity.build,
-        },
-        calibration=calibration,
+        run_key=job.plan.run_key,
+        part=job.part.as_json(),
+        role=job.role,
+        grade=job.grade,
+        plan=asdict(job.plan),
+        box={name: getattr(identity, name) for name in ("box", "model", "firmware", "build")},
+        calibration=job.document,
         simulated=identity.simulated,
         label=label,
         note=note,
-        started_utc=began,
+        started_utc=job.began_utc,
     )
 
 
 class _Ender:
     """Asks the judge once a second of dwell whether the run may end, and asks the box to finish when it may."""
 
-    def __init__(
-        self,
-        box: Box,
-        part: Part,
-        place: Place | None,
-        grade: str,
-        calibration: Calibration | None,
-        thresholds: Thresholds | None,
-    ) -> None:
+    def __init__(self, box: Box, job: _Job) -> None:
         self._box = box
-        self._about = (part, place)
-        self._grade = grade
-        self._calibration = calibration
-        self._thresholds = thresholds
+        self._job = job
         self._asked_ms = 0
         self._over = False
 
@@ -168,29 +157,21 @@ class _Ender:
         if self._over or run.state != "dwell" or not run.rows or run.rows[-1][1] - self._asked_ms < 1000:
             return
         self._asked_ms = run.rows[-1][1]
-        trace = calibrate(run.raw(), self._calibration)
-        if may_end(trace, *self._about, grade=self._grade, thresholds=self._thresholds) is not None:
+        job = self._job
+        trace = calibrate(run.raw(), job.calibration)
+        if may_end(trace, job.part, job.place, grade=job.grade, thresholds=job.thresholds) is not None:
             self._over = True
             self._box.finish()
 
 
-def _follow(run: Run, writer: RunWriter | None, watcher: Watcher | None, ender: _Ender | None) -> None:
+def _follow(run: Run, recording: Recording, watcher: Watcher | None, ender: _Ender | None) -> None:
     """Everything that comes goes into the record first, then to whoever watches."""
     for notice in run:
-        if writer is not None:
-            record(writer, notice)
+        recording.take(notice)
         if watcher is not None:
             watcher.happened(notice, run)
         if ender is not None:
             ender.look(run)
-
-
-def record(writer: RunWriter, notice: Notice) -> None:
-    """Write one event."""
-    if notice.method == "samples":
-        writer.rows(notice.params["rows"])
-    else:
-        writer.event(notice.method, notice.params)
 
 
 def _made_safe(run: Run | None, error: BaseException) -> BaseException:
@@ -206,68 +187,31 @@ def _made_safe(run: Run | None, error: BaseException) -> BaseException:
     return stopped() if isinstance(error, KeyboardInterrupt) else error
 
 
-def _interrupted(writer: RunWriter | None, run: Run | None, error: BaseException) -> None:
-    """Keep what came while the run was being stopped, and say why it ended."""
-    if writer is None:
-        return
-    if run is not None:
-        for notice in run.unseen():
-            record(writer, notice)
-    if run is None:
-        why = f"the run did not begin: {_words(error)}"
-    elif isinstance(error, (KeyboardInterrupt, StoppedError)):
-        why = "stopped by the user"
-    else:
-        why = _words(error)
-    writer.interrupted(why)
-
-
-def _words(error: BaseException) -> str:
-    return error.message if isinstance(error, DwellbenchError) else repr(error)
-
-
-def _judged(
-    run: Run,
-    part: Part,
-    place: Place | None,
-    grade: str,
-    calibration: Calibration | None,
-    plan: Plan,
-    thresholds: Thresholds | None,
-    esr_ohm: float | None,
-) -> Outcome:
-    trace = calibrate(run.raw(), calibration)
+def _judged(run: Run, job: _Job) -> Outcome:
     return judge(
-        trace,
-        part,
-        place,
-        grade=grade,
+        calibrate(run.raw(), job.calibration),
+        job.part,
+        job.place,
+        grade=job.grade,
         end=run.end,
         fault=run.fault,
-        thresholds=thresholds,
-        asked_V=plan.volts_V,
-        asked_s=plan.dwell_s,
-        esr_ohm=esr_ohm,
+        thresholds=job.thresholds,
+        asked_V=job.plan.volts_V,
+        asked_s=job.plan.dwell_s,
+        esr_ohm=job.esr_ohm,
     )
 
 
-def _stamps(
-    box: Box,
-    run: Run,
-    calibration: dict[str, Any] | None,
-    role: str | None,
-    began: str,
-    writer: RunWriter | None,
-) -> dict[str, Any]:
+def _stamps(box: Box, run: Run, job: _Job, record: str | None) -> dict[str, Any]:
     return {
-        "record": None if writer is None else f"R{writer.id}",
+        "record": record,
         "run": run.plan.run_key,
-        "time_utc": began,
+        "time_utc": job.began_utc,
         "box": box.identity.box,
         "firmware": box.identity.firmware,
-        "calibration": None if calibration is None else str(calibration.get("id")),
+        "calibration": None if job.document is None else str(job.document.get("id")),
         "simulated": box.identity.simulated,
-        "role": role,
+        "role": job.role,
     }
 
 

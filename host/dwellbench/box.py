@@ -14,13 +14,14 @@ from collections.abc import Callable
 from dataclasses import dataclass, field
 from typing import Any
 
-from dwellbench.errors import FaultError, LinkError, UsageError
+from dwellbench.errors import DwellbenchError, FaultError, LinkError, StoppedError, UsageError
 from dwellbench.measure.calibrate import calibrate
 from dwellbench.measure.calibration import Calibration
 from dwellbench.measure.trace import Trace
 from dwellbench.plan import Plan, Ratings
-from dwellbench.run import Run
+from dwellbench.run import EVENT_S, Run, stopped, unproven
 from dwellbench.wire.conversation import Conversation
+from dwellbench.wire.core import Notice
 from dwellbench.wire.said import fault
 
 _POWERED = ("charge", "dwell", "measure", "form")
@@ -146,6 +147,7 @@ class Box(Conversation):
 
         A run that an earlier host left behind is stopped first: asking how it goes would keep it alive.
         """
+        self.know_again()
         if self.status()["state"] in _POWERED:
             self.abort()
         status = self.wait_for(lambda now: now["state"] in ("rest", "lockout"), seconds)
@@ -160,19 +162,63 @@ class Box(Conversation):
     # -- running
 
     def start(self, plan: Plan) -> Run:
-        """Begin a run and return it; iterate to follow. Raises RefusedError with the box's own reason."""
-        self._waiting.clear()
-        answer = self.ask("run", plan.to_wire())
+        """Begin a run and return it; iterate to follow. Raises RefusedError with the box's own reason.
+
+        A plan with the run_key of the run that is under way, or that ended last, begins nothing: that run is taken up, with what
+        the box still keeps of it from its beginning.
+        """
+        self.know_again()
+        status = self.status()
+        again = status["run_key"] == plan.run_key
+        self._inbox.begin_at(0 if again else status["n"])  # what came before belongs to another run
+        try:
+            answer = self.ask("run", plan.to_wire())
+        except KeyboardInterrupt:
+            raise self._stopped() from None
         self.keepalive = True
-        return Run(self, plan, answer["run"], answer["estimate_ms"] / 1e3)
+        run = Run(self, plan, answer["run"], answer["estimate_ms"] / 1e3)
+        if again:
+            run.take_up(self._kept(status["n"]))
+        return run
+
+    def _stopped(self) -> StoppedError:
+        """Interrupted over the question, so that nobody knows whether it began: it is stopped in either case."""
+        try:
+            self.settle()
+        except KeyboardInterrupt:
+            return unproven()
+        return stopped()
+
+    def _kept(self, n: int) -> list[Notice]:
+        """The events before `n` that the box keeps of its last run."""
+        came: list[Notice] = []
+        self.expect(n)
+        while self._inbox.next_n < n or self._inbox.ready:
+            if not self.next_event(EVENT_S, came.append):
+                raise LinkError("The box does not send what it kept of this run.", remedy="Try again.")
+        begins = [
+            at for at, one in enumerate(came) if one.params.get("state") == "charge" and one.method == "state"
+        ]
+        if not begins:
+            return came  # its beginning has been written over
+        self._inbox.begin_at(self._inbox.next_n)  # what is gone was not this run's
+        return came[begins[-1] :]
 
     def run(self, plan: Plan) -> Trace:
-        """Run to the end and return the trace in volts and amperes. Raises FaultError when a fault ended it."""
+        """Run to the end and return the trace in volts and amperes. Raises FaultError when a fault ended it.
+
+        The error of a run that did not come to its end carries what had been measured (`measured`, a RawTrace).
+        """
+        calibration = self.stored_calibration()
         run = self.start(plan)
-        for _ in run:
-            pass
-        run.raise_fault()
-        return calibrate(run.raw(), self.stored_calibration())
+        try:
+            for _ in run:
+                pass
+            run.raise_fault()
+        except DwellbenchError as error:
+            run.carried_by(error)
+            raise
+        return calibrate(run.raw(), calibration)
 
     def stored_calibration(self) -> Calibration | None:
         """The box's calibration, checked, or None."""

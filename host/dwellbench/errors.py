@@ -17,6 +17,8 @@ class DwellbenchError(Exception):
 
     kind = "error"
     exit = 1
+    measured: Any = None
+    """What had been measured when it happened (a RawTrace), for errors that end a run; no part of the document."""
 
     def __init__(self, message: str, *, remedy: str = "", **details: Any) -> None:
         super().__init__(message)

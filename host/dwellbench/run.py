@@ -7,13 +7,15 @@ call returns, unless `proven` says otherwise: then the box still holds the lid l
 
 from __future__ import annotations
 
+from collections import deque
 from collections.abc import Iterator
 from datetime import UTC, datetime
 from typing import TYPE_CHECKING, Any
 
-from dwellbench.errors import FaultError, LinkError, StoppedError
+from dwellbench.errors import DwellbenchError, FaultError, LinkError, StoppedError
 from dwellbench.measure.raw import RawTrace
 from dwellbench.plan import Plan
+from dwellbench.wire.conversation import RECONNECT_S
 from dwellbench.wire.core import Notice
 from dwellbench.wire.said import fault as fault_error
 
@@ -43,36 +45,44 @@ class Run:
         self.proven = False  # the part was proven discharged when it was over
         self._ended_s = 0.0
         self._stopping = False
-        self._unseen: list[Notice] = []
+        self._given: deque[Notice] = deque()
 
     def __iter__(self) -> Iterator[Notice]:
-        while not self.over:
+        while self._given or not self.over:
             try:
-                yield self._next()
+                if not self._given:
+                    self._next()
+                yield self._given[0]
+                self._given.popleft()  # only now: whoever was interrupted over it finds it in `unseen`
             except KeyboardInterrupt:
                 self._interrupted()
 
+    def take_up(self, kept: list[Notice]) -> None:
+        """Begin with what the box kept of this run."""
+        for notice in kept:
+            self._take(notice)
+
     def unseen(self) -> list[Notice]:
-        """The events that came while the run was being stopped, and that no iteration has given."""
-        unseen, self._unseen = self._unseen, []
+        """The events that no iteration has gone past, such as came while the run was being stopped.
+
+        The first may be the one that was given last, if whoever iterated was interrupted over it.
+        """
+        unseen = list(self._given)
+        self._given.clear()
         return unseen
 
-    def _next(self) -> Notice:
-        """The next event; none for a while means that the box is asked whether it is still at it."""
-        waited = 0.0
-        while waited < SAFE_S:
-            notice = self._box.next_event(EVENT_S)
-            if self._box.restarted:
+    def _next(self) -> None:
+        """Take the next event; none for a while means that the box is asked whether it is still at it."""
+        until = self._box.clock() + SAFE_S
+        while self._box.clock() < until:
+            came = self._box.next_event(EVENT_S, self._take)
+            status = None if came or self._box.restarted else self._asked()
+            if self._box.restarted or (status and status["boot"] != self._box.identity.boot):
+                self._box.restarted = True
                 self._finish()
                 raise _restarted()
-            if notice is not None:
-                self._take(notice)
-                return notice
-            waited += EVENT_S
-            status = self._box.status()
-            if status["boot"] != self._box.identity.boot:
-                self._finish()
-                raise _restarted()
+            if status is None:
+                return
             if status["run"] != self.number:
                 break
             self._box.expect(status["n"])
@@ -80,8 +90,19 @@ class Run:
             "The box says nothing more of this run.", remedy="See what it is doing with: dwellbench box."
         )
 
+    def _asked(self) -> dict[str, Any]:
+        """The status of a box that has fallen silent: asked again for half a minute, for it keeps what it measured."""
+        until = self._box.clock() + RECONNECT_S
+        while True:
+            try:
+                return self._box.status()
+            except LinkError:
+                if self._box.clock() >= until:
+                    raise
+
     def _take(self, notice: Notice) -> None:
         params = notice.params
+        self._given.append(notice)
         if notice.method == "samples":
             self.rows.extend(params["rows"])
         elif notice.method == "state":
@@ -114,7 +135,7 @@ class Run:
             self._stopping = True
             self._box.abort()
         while not self.over:
-            self._unseen.append(self._next())
+            self._next()
 
     def _interrupted(self) -> None:
         try:
@@ -124,6 +145,11 @@ class Run:
         raise stopped()
 
     # -- what came of it
+
+    def carried_by(self, error: BaseException) -> None:
+        """Let an error that ends the run carry what had been measured."""
+        if isinstance(error, DwellbenchError):
+            error.measured = self.raw()
 
     def raw(self) -> RawTrace:
         """The rows so far, with what is known of the run."""

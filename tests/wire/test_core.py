@@ -66,6 +66,49 @@ def test_answers_refusals_and_notices_are_told_apart() -> None:
     assert told.n == 3
 
 
+HELLO: dict[str, object] = {
+    "protocol": [1, 0],
+    "firmware": "0",
+    "build": "0" * 8,
+    "model": "m",
+    "box": "0" * 16,
+}
+
+
+def test_a_hello_of_our_version_must_be_whole() -> None:
+    client = Client()
+    _, id_ = client.request("hello")
+    (event,) = client.receive(line({"result": HELLO, "id": id_}))
+    assert isinstance(event, Junk)
+    assert "ratings" in event.why
+
+
+@pytest.mark.parametrize("protocol", [[2, 0], [0, 9], [2], [9, "x", None]])
+def test_a_hello_of_another_version_is_heard_whatever_its_shape(protocol: list[object]) -> None:
+    client = Client()
+    _, id_ = client.request("hello")
+    (event,) = client.receive(line({"result": {"protocol": protocol}, "id": id_}))
+    assert isinstance(event, Answer)
+    assert event.result["protocol"] == protocol
+
+
+@pytest.mark.parametrize("protocol", [[], ["2", 0], 2, None, {"major": 2}])
+def test_a_version_that_is_none_is_junk(protocol: object) -> None:
+    client = Client()
+    _, id_ = client.request("hello")
+    (event,) = client.receive(line({"result": {"protocol": protocol}, "id": id_}))
+    assert isinstance(event, Junk)
+
+
+def test_every_answer_belongs_to_one_question() -> None:
+    client = Client()
+    _, id_ = client.request("keepalive")
+    answer = line({"result": {"t": 5}, "id": id_})
+    refusal = line({"error": {"code": -32010, "message": "Not in this state"}, "id": 77})
+    kinds = [type(event).__name__ for event in client.receive(answer + answer + refusal)]
+    assert kinds == ["Answer", "Junk", "Junk"]
+
+
 JUNK = [
     b"hello\n",
     b"{}\n",

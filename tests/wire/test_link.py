@@ -1,17 +1,15 @@
-"""Links that cannot be opened, and the log of what passed."""
+"""Links that cannot be opened, and how one reads and waits."""
 
 from __future__ import annotations
 
 import os
 import socket
-from pathlib import Path
 
 import pytest
 import serial
 
-from dwellbench.errors import NoBoxError, UsageError
+from dwellbench.errors import LinkError, NoBoxError
 from dwellbench.wire.link import open_link
-from dwellbench.wire.wire_log import WireLog, read_log
 
 
 def test_a_refused_port_says_that_nothing_listens() -> None:
@@ -48,21 +46,29 @@ def test_a_port_without_permission_says_so(monkeypatch: pytest.MonkeyPatch) -> N
     assert "group" in caught.value.remedy
 
 
-def test_the_log_is_read_back_line_by_line(tmp_path: Path) -> None:
-    log = WireLog(tmp_path / "log")
-    log.sent(1.0, b'{"a":1}\n{"b"')
-    log.received(1.5, b"junk \xff\n")
-    log.sent(2.0, b":2}\n")
-    log.received(3.0, b"half")
-    log.close()
-    assert read_log(tmp_path / "log") == [
-        (1.0, ">", b'{"a":1}\n'),
-        (1.5, "<", b"junk \\xff\n"),
-        (2.0, ">", b'{"b":2}\n'),
-    ]
-    assert "# unfinished < half" in (tmp_path / "log").read_text()
+def test_what_came_before_a_link_broke_is_not_lost() -> None:
+    with socket.create_server(("127.0.0.1", 0)) as listener:
+        link = open_link(f"socket://127.0.0.1:{listener.getsockname()[1]}")
+        peer, _ = listener.accept()
+        peer.sendall(b"last words")
+        peer.close()
+        heard = b""
+        with pytest.raises(LinkError):
+            for _ in range(20):
+                heard += link.read(1.0)
+        assert heard == b"last words"
+        link.close()
 
 
-def test_a_log_that_cannot_be_written_says_so(tmp_path: Path) -> None:
-    with pytest.raises(UsageError, match="cannot be written"):
-        WireLog(tmp_path / "no" / "such" / "folder")
+def test_a_peer_that_takes_nothing_does_not_hold_a_write_for_ever(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("dwellbench.wire.link.WRITE_S", 0.1)
+    master, slave = os.openpty()
+    try:
+        link = open_link(os.ttyname(slave))
+        with pytest.raises(LinkError):
+            for _ in range(10):
+                link.write(b"x" * 4096)
+        link.close()
+    finally:
+        os.close(master)
+        os.close(slave)

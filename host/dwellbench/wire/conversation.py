@@ -1,49 +1,60 @@
 """A conversation with one box: ask and be answered, events in order, and the link taken up again when it is lost.
 
-All waiting goes through the link's own clock, so that an emulated box in this process runs as fast as it can; only the pause
-between two tries to open a lost link is of the wall's.
+All waiting goes through the link's own clock, so that an emulated box in this process runs as fast as it can.
 """
 
 from __future__ import annotations
 
-import time
-from collections import deque
+from collections.abc import Callable
 from types import TracebackType
 from typing import Any, Self
 
 from dwellbench.errors import LinkError, NoBoxError, WrongBoxError
 from dwellbench.wire.codes import MAJOR
 from dwellbench.wire.core import Answer, Client, Junk, Notice, Refusal
+from dwellbench.wire.held import held
+from dwellbench.wire.inbox import Inbox
 from dwellbench.wire.link import Link, open_link
 from dwellbench.wire.said import refused
-from dwellbench.wire.stream import Stream
 from dwellbench.wire.wire_log import WireLog
 
-ANSWER_S = 1.0  # the box answers within a few periods; a second covers a busy USB host
+ANSWER_S = 1.5  # half a second for a long line in, as much for the lines before the answer, and a busy host
 TRIES = 3
 HELLO_S = 3.0
-FETCHES = 5  # times the same event is asked for
 KEEPALIVE_S = 0.5  # a quarter of the silence that ends a run
+HURRY_S = 1.5  # a link back within this finds the run still under way: the box waits 2 s
+HURRY_RETRY_S = 0.05
+RETRY_S = 0.25
 RECONNECT_S = (
     30.0  # what the box recorded stays for two minutes; half a minute of trying, then the user is told
 )
-RETRY_S = 0.25
+
+Reopen = Callable[[], Link]
 
 
 class Conversation:
-    """An open link and what passes over it. `hello` is the box's own answer to it."""
+    """An open link and what passes over it. `hello` is the box's own answer to it.
 
-    def __init__(self, url: str, *, wire_log: WireLog | None = None, link: Link | None = None) -> None:
+    `link` and `reopen` replace how the link is made, at first and after it was lost. Without `reopen`, a box that is emulated in
+    this process is not opened again: that would be another box.
+    """
+
+    def __init__(
+        self,
+        url: str,
+        *,
+        wire_log: WireLog | None = None,
+        link: Link | None = None,
+        reopen: Reopen | None = None,
+    ) -> None:
         self.url = url
         self._log = wire_log
         self._link = link or open_link(url, wire_log)
+        self._reopen = reopen
         self._client = Client()
-        self._answers: dict[int | str, Answer | Refusal] = {}
-        self._waiting: deque[Notice] = deque()
-        self._stream = Stream(0)
-        self._fetching: tuple[int | str, float] | None = None
-        self._fetched = -1
-        self._fetches = 0
+        self._inbox = Inbox()
+        self._wanted: int | None = None
+        self._answer: Answer | Refusal | None = None
         self._sent_s = -1e9
         self.keepalive = False
         self.restarted = False
@@ -71,7 +82,7 @@ class Conversation:
 
     def clock(self) -> float:
         """Seconds of the link's own clock."""
-        return self._link.clock()
+        return self._link.clock.now()
 
     def rest(self, seconds: float) -> None:
         """Let time pass on the link's clock, taking what comes."""
@@ -86,12 +97,11 @@ class Conversation:
         self._write(b"\n")  # ends whatever half line an earlier host left
         heard = self.junk
         until = self.clock() + HELLO_S
-        while self.clock() < until:
+        answer = None
+        while answer is None and self.clock() < until:
             answer = self._try("hello", {})
-            if isinstance(answer, Answer):
-                return self._accept(answer.result)
-            if isinstance(answer, Refusal):
-                break
+        if isinstance(answer, Answer):
+            return self._accept(answer.result)
         if self.junk > heard or isinstance(answer, Refusal):
             raise WrongBoxError(
                 f"What answers at {self.url} is not a dwellbench box.",
@@ -110,9 +120,15 @@ class Conversation:
             )
         scale = hello.get("time_scale")
         if scale not in (None, "virtual"):
-            self._link.scale = float(scale)
-        self._stream = Stream(hello["n"])
+            self._link.clock.rescale(float(scale))
+        self._inbox.begin_at(hello["n"])
         return hello
+
+    def know_again(self) -> None:
+        """After the box was restarted: say hello anew, and go on with what it is now."""
+        if self.restarted:
+            self.hello = self._introduce()
+            self.restarted = False
 
     # -- asking
 
@@ -122,47 +138,50 @@ class Conversation:
             answer = self._try(method, params or {})
             if isinstance(answer, Answer):
                 return answer.result
-            if isinstance(answer, Refusal) and answer.id is not None:
+            if isinstance(answer, Refusal):
                 raise refused(answer)
         raise LinkError(
             f"The box at {self.url} does not answer {method!r}.", remedy="Check the cable, then try again."
         )
 
     def _try(self, method: str, params: dict[str, Any]) -> Answer | Refusal | None:
-        data, id_ = self._client.request(method, params)
+        data, self._wanted = self._client.request(method, params)
+        self._answer = None
         self._write(data)
-        until = self.clock() + ANSWER_S
-        while id_ not in self._answers and self.clock() < until:
+        until = self.clock() + self._link.clock.patience(ANSWER_S)
+        while self._answer is None and self.clock() < until:
             self._receive(until - self.clock())
-        return self._answers.pop(id_, None)
+        return self._answer
 
-    def next_event(self, timeout_s: float) -> Notice | None:
-        """The next event in order, or None when none comes in time."""
+    def next_event(self, timeout_s: float, take: Callable[[Notice], object]) -> bool:
+        """Hand the next event in order to `take`; return False when none comes in time. No interrupt comes between."""
         until = self.clock() + timeout_s
-        while not self._waiting:
+        while not self._inbox.ready:
             left = until - self.clock()
             if left <= 0:
-                return None
+                return False
             self._receive(left)
-        return self._waiting.popleft()
+        with held():
+            take(self._inbox.ready.popleft())
+        return True
 
     def expect(self, n: int) -> None:
         """The box says that its next event will be `n`; what is missing before it is fetched."""
-        self._stream.expect(n)
+        self._inbox.expect(n)
         self._fetch()
 
     @property
     def lost(self) -> int:
         """Events that the box no longer kept when they were asked for."""
-        return self._stream.lost
+        return self._inbox.lost
 
     # -- bytes
 
     def _write(self, data: bytes) -> None:
         try:
             self._link.write(data)
-        except LinkError:
-            self._reconnect()
+        except LinkError as error:
+            self._reconnect(error)
             return
         self._sent_s = self.clock()
 
@@ -176,11 +195,12 @@ class Conversation:
             timeout_s = min(timeout_s, due)
         try:
             data = self._link.read(max(timeout_s, 0.0))
-        except LinkError:
-            self._reconnect()
+        except LinkError as error:
+            self._reconnect(error)
             return
-        for event in self._client.receive(data):
-            self._take(event)
+        with held():
+            for event in self._client.receive(data):
+                self._take(event)
         self._fetch()
 
     def _take(self, event: Answer | Refusal | Notice | Junk) -> None:
@@ -188,12 +208,10 @@ class Conversation:
             self._notice(event)
         elif isinstance(event, Junk):
             self.junk += 1
-        elif self._fetching is not None and event.id == self._fetching[0]:
-            self._fetching = (event.id, self.clock() + ANSWER_S)
-            if isinstance(event, Answer):
-                self._waiting.extend(self._stream.oldest_is(event.result["from"]))
-        elif event.id is not None:
-            self._answers[event.id] = event
+        elif self._inbox.answer(event, self.clock()):
+            pass
+        elif event.id is not None and event.id == self._wanted:
+            self._answer = event
         elif isinstance(event, Refusal) and event.data == "another host is connected":
             raise NoBoxError(
                 f"{self.url} is in use by another program.",
@@ -201,84 +219,78 @@ class Conversation:
             )
 
     def _notice(self, notice: Notice) -> None:
-        if notice.params["boot"] != self.hello.get("boot"):
+        if not self.hello:
+            return  # of a time before we were introduced
+        if notice.params["boot"] != self.hello["boot"]:
             self.restarted = True
             return
-        self._waiting.extend(self._stream.take(notice))
+        self._inbox.take(notice)
 
     def _fetch(self) -> None:
-        """Ask for the first gap, once at a time, again if it is not filled in a second."""
-        gap = self._stream.missing()
-        if gap is None:
-            self._fetching = None
-            self._fetches = 0
-            return
-        if self._fetching is not None and self.clock() < self._fetching[1]:
-            return
-        self._fetches = self._fetches + 1 if gap[0] == self._fetched else 1
-        self._fetched = gap[0]
-        if self._fetches > FETCHES:  # it comes, and never as the schema has it: one event is lost, the rest is not
-            self._waiting.extend(self._stream.oldest_is(gap[0] + 1))
-            self._fetching = None
-            return
-        data, id_ = self._client.request("samples", {"from": gap[0], "count": gap[1]})
-        self._fetching = (id_, self.clock() + ANSWER_S)
-        self._write(data)
+        """Ask for the first gap."""
+        gap = self._inbox.due(self.clock())
+        if gap is not None:
+            data, id_ = self._client.request("samples", {"from": gap[0], "count": gap[1]})
+            self._inbox.asked(id_, gap, self.clock())
+            self._write(data)
 
     # -- a lost link
 
-    def _reconnect(self) -> None:
-        """Try again, at first quickly, for half a minute; then say hello and fetch what was missed."""
-        self._link.close()
+    def _reconnect(self, broke: LinkError) -> None:
+        """Try again, at first quickly, for half a minute; the new link says hello, and what was missed is asked for."""
+        old = self._link
+        old.close()
+        if not self.hello or (old.clock.virtual and self._reopen is None):
+            raise broke
         self._client.forget()
-        self._fetching = None
-        keepalive, self.keepalive = self.keepalive, False
-        start = self._wall()
+        self._inbox.cut()
+        start = self.clock()
         while True:
             try:
-                self._link = self._reopened()
-                break
-            except (LinkError, WrongBoxError) as error:
-                if self._wall() - start > RECONNECT_S:
-                    raise LinkError(
-                        f"The link to {self.url} is lost.",
-                        remedy="The box discharges the part by itself. Connect again; it keeps the last two minutes.",
-                    ) from error
-                self._pause(RETRY_S)
-        self.keepalive = keepalive
+                self._link = self._reopened(old)
+                return
+            except LinkError as error:
+                gone_s = old.clock.now() - start
+                if gone_s > RECONNECT_S:
+                    raise error if isinstance(error, WrongBoxError) else _lost(self.url) from error
+                old.pause(HURRY_RETRY_S if gone_s < HURRY_S else RETRY_S)
 
-    def _reopened(self) -> Link:
+    def _reopened(self, old: Link) -> Link:
         """Open the link anew and make sure that it is the same box."""
-        link = open_link(self.url, self._log)
-        link.scale = self._link.scale
+        link = self._reopen() if self._reopen else open_link(self.url, self._log, old.clock)
+        try:
+            self._same(self._greeted(link))
+        except BaseException:
+            link.close()
+            raise
+        self._sent_s = link.clock.now()
+        return link
+
+    def _greeted(self, link: Link) -> dict[str, Any]:
         data, id_ = self._client.request("hello", {})
         link.write(b"\n" + data)
-        until = link.clock() + ANSWER_S
-        while link.clock() < until:
-            for event in self._client.receive(link.read(until - link.clock())):
+        until = link.clock.now() + link.clock.patience(ANSWER_S)
+        while (left := until - link.clock.now()) > 0:
+            for event in self._client.receive(link.read(left)):
                 if isinstance(event, Answer) and event.id == id_:
-                    return self._same(link, event.result)
+                    return event.result
                 if isinstance(event, Notice):
                     self._notice(event)
-        link.close()
         raise NoBoxError(f"Nothing answers at {self.url}.", remedy="Is the box switched on?")
 
-    def _same(self, link: Link, hello: dict[str, Any]) -> Link:
+    def _same(self, hello: dict[str, Any]) -> None:
         if hello["box"] != self.hello["box"]:
-            link.close()
             raise WrongBoxError(
                 f"Another box is at {self.url} now.", remedy="Connect the box that the run began on."
             )
         if hello["boot"] != self.hello["boot"]:
             self.restarted = True
-            self.hello = hello
-            self._stream = Stream(hello["n"])
-        elif hello["n"] > self._stream.next_n:
-            self._stream.expect(hello["n"])
-        return link
+        else:
+            self._inbox.expect(hello["n"])
 
-    def _wall(self) -> float:
-        return time.monotonic()
 
-    def _pause(self, seconds: float) -> None:
-        time.sleep(seconds)
+def _lost(url: str) -> LinkError:
+    return LinkError(
+        f"The link to {url} is lost.",
+        remedy="The box discharges the part by itself. Connect again; it keeps the last two minutes.",
+    )

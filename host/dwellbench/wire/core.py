@@ -16,7 +16,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from dwellbench.wire import schemas
-from dwellbench.wire.codes import error_id
+from dwellbench.wire.codes import MAJOR, error_id
 
 LINE_BYTES = 512
 _CRC_HEAD = b',"crc":'
@@ -109,8 +109,10 @@ class Client:
         return seal(message), id_
 
     def notify(self, method: str) -> bytes:
-        """Return the bytes of a request that wants no answer."""
-        return seal({"jsonrpc": "2.0", "method": method, "params": {}})
+        """Return the bytes of a request that wants no answer. WrongMessage if the schema does not allow it."""
+        message = {"jsonrpc": "2.0", "method": method, "params": {}}
+        schemas.check(f"request.{method}", message)
+        return seal(message)
 
     def forget(self) -> None:
         """The link was lost: what was under way is gone."""
@@ -151,11 +153,24 @@ class Client:
             schemas.check("error", message)
             error = message["error"]
             if message["id"] is not None:
-                self._asked.pop(message["id"], None)
+                self._was_asked(message["id"])
             return Refusal(message["id"], error["code"], error["message"], error.get("data"))
-        id_ = message.get("id")
-        asked = self._asked.pop(id_, None) if isinstance(id_, (int, str)) else None
-        if asked is None or not isinstance(id_, (int, str)):
-            raise schemas.WrongMessage("an answer to nothing that was asked")
-        schemas.check(f"result.{asked}", message)
+        id_: int | str = message.get("id", "")
+        asked = self._was_asked(id_)
+        if not (asked == "hello" and _other_major(message)):
+            schemas.check(f"result.{asked}", message)
         return Answer(id_, asked, message["result"])
+
+    def _was_asked(self, id_: int | str) -> str:
+        """Return the method that the answer belongs to, which is answered by that."""
+        asked = self._asked.pop(id_, None) if isinstance(id_, (int, str)) else None
+        if asked is None:
+            raise schemas.WrongMessage("an answer to nothing that was asked")
+        return asked
+
+
+def _other_major(message: dict[str, Any]) -> bool:
+    """Say whether a hello names another major version: then nothing else of it need be as we know it."""
+    result = message.get("result")
+    version = result.get("protocol") if isinstance(result, dict) else None
+    return isinstance(version, list) and bool(version) and isinstance(version[0], int) and version[0] != MAJOR

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from dwellbench.wire.core import Notice
 
-ASK_MOST = 256
+ASK_MOST = 64  # what the box sends again within a second or so, beside what it sends anyway
 
 
 class Stream:
