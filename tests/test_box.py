@@ -257,7 +257,10 @@ def test_a_second_run_while_one_is_under_way_is_refused(film: Bench) -> None:
     run = film.start(plan(film))
     with pytest.raises(RefusedError, match="under way"):
         film.start(plan(film))
-    list(run)
+    numbers = [notice.n for notice in run]
+    assert run.end == "complete"
+    assert numbers == list(range(numbers[0], numbers[0] + len(numbers)))
+    assert run.rows[0][1] < 200
 
 
 # ---- what the box keeps

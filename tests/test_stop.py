@@ -11,10 +11,10 @@ from types import FrameType
 from typing import Any
 
 import pytest
-from tests.helpers import FILM, plan, ready, scenario, truth
+from tests.helpers import FILM, FILM_1U, fault, plan, ready, scenario, truth
 
 from dwellbench.bench import Bench
-from dwellbench.errors import StoppedError
+from dwellbench.errors import FaultError, StoppedError
 from dwellbench.records import Store
 
 pytestmark = pytest.mark.skipif(not hasattr(signal, "setitimer"), reason="needs interval timers")
@@ -124,6 +124,20 @@ def test_a_second_interrupt_does_not_wait_and_says_what_the_box_goes_on_to_do(fi
     film._link.pause(40)
     assert abs(truth(film).part_V) < 30
     assert film.status()["state"] == "rest"
+
+
+def test_a_stop_that_leaves_charge_unaccounted_for_does_not_call_the_part_discharged(tmp_path: Path) -> None:
+    """A lead that has let go keeps its charge where no bleed reaches it; the user may be about to open the lid."""
+    url = scenario(tmp_path, FILM_1U, extra=fault("part_opens", 12.0)) + "?seed=5"
+    with ready(url) as box:
+        run = box.start(plan(box, "1uF 630V film", dwell=600.0))
+        with pytest.raises(FaultError) as caught:
+            for _ in run:
+                if run.rows and run.rows[-1][1] > 15_000:
+                    run.stop()
+                    raise run.stopped()
+        assert caught.value.details["fault"] in ("charge_left", "bleed_slow")
+        assert "Treat the part as charged" in caught.value.remedy
 
 
 def test_an_interrupt_while_the_box_is_asked_to_run_stops_what_may_have_begun(

@@ -24,7 +24,7 @@ from dwellbench.part import Part
 from dwellbench.plan import Plan
 from dwellbench.recording import Recording
 from dwellbench.records import RunWriter, Store
-from dwellbench.run import Run, stopped, unproven
+from dwellbench.run import Run, unproven
 from dwellbench.wire.core import Notice
 from dwellbench.wire.held import held
 from dwellbench.wire.wire_log import WireLog
@@ -184,7 +184,7 @@ def _made_safe(run: Run | None, error: BaseException) -> BaseException:
         if isinstance(second, KeyboardInterrupt):
             return unproven()
         return second
-    return stopped() if isinstance(error, KeyboardInterrupt) else error
+    return run.stopped() if isinstance(error, KeyboardInterrupt) else error
 
 
 def _judged(run: Run, job: _Job) -> Outcome:

@@ -24,7 +24,7 @@ from dwellbench.wire.conversation import Conversation
 from dwellbench.wire.core import Notice
 from dwellbench.wire.said import fault
 
-_POWERED = ("charge", "dwell", "measure", "form")
+_ENDED_BY_ABORT = ("charge", "dwell", "measure", "form", "recovery")
 WAKE_S = 180.0  # proving discharge after power-up takes half a minute at most
 
 LID_S = 300.0  # somebody is asked to open the lid
@@ -148,7 +148,7 @@ class Box(Conversation):
         A run that an earlier host left behind is stopped first: asking how it goes would keep it alive.
         """
         self.know_again()
-        if self.status()["state"] in _POWERED:
+        if self.status()["state"] in _ENDED_BY_ABORT:
             self.abort()
         status = self.wait_for(lambda now: now["state"] in ("rest", "lockout"), seconds)
         if status is None:
@@ -170,7 +170,6 @@ class Box(Conversation):
         self.know_again()
         status = self.status()
         again = status["run_key"] == plan.run_key
-        self._inbox.begin_at(0 if again else status["n"])  # what came before belongs to another run
         try:
             answer = self.ask("run", plan.to_wire())
         except KeyboardInterrupt:
@@ -179,6 +178,8 @@ class Box(Conversation):
         run = Run(self, plan, answer["run"], answer["estimate_ms"] / 1e3)
         if again:
             run.take_up(self._kept(status["n"]))
+        else:
+            self._inbox.skip_to(status["n"])  # what came before belongs to another run
         return run
 
     def _stopped(self) -> StoppedError:
@@ -192,6 +193,7 @@ class Box(Conversation):
     def _kept(self, n: int) -> list[Notice]:
         """The events before `n` that the box keeps of its last run."""
         came: list[Notice] = []
+        self._inbox.begin_at(0)
         self.expect(n)
         while self._inbox.next_n < n or self._inbox.ready:
             if not self.next_event(EVENT_S, came.append):
@@ -201,7 +203,7 @@ class Box(Conversation):
         ]
         if not begins:
             return came  # its beginning has been written over
-        self._inbox.begin_at(self._inbox.next_n)  # what is gone was not this run's
+        self._inbox.skip_to(n)  # what is gone was not this run's
         return came[begins[-1] :]
 
     def run(self, plan: Plan) -> Trace:

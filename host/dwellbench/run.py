@@ -72,6 +72,14 @@ class Run:
         return unseen
 
     def _next(self) -> None:
+        """Take the next event. After an error there is none, and no sign of life keeps the run going."""
+        try:
+            self._follow()
+        except DwellbenchError:
+            self._finish()
+            raise
+
+    def _follow(self) -> None:
         """Take the next event; none for a while means that the box is asked whether it is still at it."""
         until = self._box.clock() + SAFE_S
         while self._box.clock() < until:
@@ -79,7 +87,6 @@ class Run:
             status = None if came or self._box.restarted else self._asked()
             if self._box.restarted or (status and status["boot"] != self._box.identity.boot):
                 self._box.restarted = True
-                self._finish()
                 raise _restarted()
             if status is None:
                 return
@@ -142,7 +149,13 @@ class Run:
             self.stop()
         except KeyboardInterrupt:
             raise unproven() from None
-        raise stopped()
+        raise self.stopped()
+
+    def stopped(self) -> DwellbenchError:
+        """What to raise after `stop`: that the user stopped it, but first of all what may still be on the part."""
+        if self.fault is not None or not self.proven:
+            return fault_error(self.fault or "not_discharged")
+        return stopped()
 
     # -- what came of it
 

@@ -7,8 +7,12 @@ from pathlib import Path
 import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
+from tests.helpers import FILM, plan, scenario
 
+from dwellbench.bench import open_box
 from dwellbench.errors import UsageError
+from dwellbench.wire.core import Answer, Junk, Notice
+from dwellbench.wire.replay import replayed
 from dwellbench.wire.wire_log import WireLog, read_log
 
 TEXT = '{"jsonrpc":"2.0","text":"\\"12 \\u00b5F \\\\ \u03a9"}'
@@ -48,6 +52,22 @@ def test_any_bytes_come_back_as_they_were(tmp_path: Path, pieces: list[bytes]) -
     log.close()
     whole = b"".join(pieces)
     assert b"".join(line for _, _, line in read_log(path)) == whole[: whole.rfind(b"\n") + 1]
+
+
+def test_a_log_replayed_gives_the_run_again(tmp_path: Path) -> None:
+    url = scenario(tmp_path, FILM) + "?seed=5"
+    with open_box(url, wire_log=tmp_path / "log") as box:
+        box.settle()
+        run = box.start(plan(box))
+        seen = list(run)
+    events = [event for _, event in replayed(tmp_path / "log")]
+    rows = [row for event in events if isinstance(event, Notice) for row in event.params.get("rows", [])]
+    assert rows == run.rows
+    assert [event for event in events if isinstance(event, Notice) and event.method == "done"] == [
+        notice for notice in seen if notice.method == "done"
+    ]
+    assert not [event for event in events if isinstance(event, Junk)]
+    assert {event.method for event in events if isinstance(event, Answer)} == {"hello", "status", "run"}
 
 
 def test_a_log_that_cannot_be_written_says_so(tmp_path: Path) -> None:

@@ -5,6 +5,7 @@ All waiting goes through the link's own clock, so that an emulated box in this p
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from types import TracebackType
 from typing import Any, Self
@@ -112,15 +113,8 @@ class Conversation:
         )
 
     def _accept(self, hello: dict[str, Any]) -> dict[str, Any]:
-        major = hello["protocol"][0]
-        if major != MAJOR:
-            raise WrongBoxError(
-                f"The box speaks version {major} of the wire, this host version {MAJOR}.",
-                remedy="Use host and firmware of the same major version.",
-            )
-        scale = hello.get("time_scale")
-        if scale not in (None, "virtual"):
-            self._link.clock.rescale(float(scale))
+        _refuse_other_major(hello)
+        self._link.clock.rescale(_scale(hello))
         self._inbox.begin_at(hello["n"])
         return hello
 
@@ -279,6 +273,7 @@ class Conversation:
         raise NoBoxError(f"Nothing answers at {self.url}.", remedy="Is the box switched on?")
 
     def _same(self, hello: dict[str, Any]) -> None:
+        _refuse_other_major(hello)
         if hello["box"] != self.hello["box"]:
             raise WrongBoxError(
                 f"Another box is at {self.url} now.", remedy="Connect the box that the run began on."
@@ -287,6 +282,24 @@ class Conversation:
             self.restarted = True
         else:
             self._inbox.expect(hello["n"])
+
+
+def _refuse_other_major(hello: dict[str, Any]) -> None:
+    major = hello["protocol"][0]
+    if major != MAJOR:
+        raise WrongBoxError(
+            f"The box speaks version {major} of the wire, this host version {MAJOR}.",
+            remedy="Use host and firmware of the same major version.",
+        )
+
+
+def _scale(hello: dict[str, Any]) -> float:
+    """How many seconds of the box pass in one of the wall's."""
+    try:
+        scale = float(hello.get("time_scale", 1.0))
+    except ValueError:
+        return 1.0  # virtual: the link has the box's own clock
+    return scale if 0.0 < scale < math.inf else 1.0
 
 
 def _lost(url: str) -> LinkError:

@@ -114,6 +114,12 @@ class Client:
         schemas.check(f"request.{method}", message)
         return seal(message)
 
+    def sent(self, line: bytes) -> None:
+        """A request as it stands in a log: its answer will be known. ValueError for a line that is none."""
+        message = unseal(line)
+        if "id" in message:
+            self._asked[message["id"]] = str(message["method"])
+
     def forget(self) -> None:
         """The link was lost: what was under way is gone."""
         self._partial.clear()

@@ -33,6 +33,13 @@ class Inbox:
         self._stream = Stream(n)
         self._asked = None
 
+    def skip_to(self, n: int) -> None:
+        """What came before the event `n` is of no use, taken or not; nor is it lost."""
+        kept = [notice for notice in self.ready if notice.n >= n]
+        kept += self._stream.oldest_is(n)
+        self.ready = deque(kept)
+        self._stream.lost = 0
+
     @property
     def next_n(self) -> int:
         """The event that comes next."""

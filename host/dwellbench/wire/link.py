@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import contextlib
 import errno
+import select
+import socket
 import sys
 from typing import Any
 
@@ -38,6 +40,7 @@ class Link:
         self.url = url
         self._port = port
         self._log = log
+        self._socket: socket.socket | None = getattr(port, "_socket", None)
         self.clock: Clock = PortClock(port) if hasattr(port, "clock") else clock or WallClock()
         # An emulated box runs inside our reads and writes; torn apart in mid-step it could not be stopped in order.
         self._whole = held if self.clock.virtual else contextlib.nullcontext
@@ -75,6 +78,9 @@ class Link:
     def _more(self) -> bytes:
         """What has come behind the first byte. A link that breaks here is told by the next read: what came before it is not lost."""
         with contextlib.suppress(*LINK_ERRORS):
+            if self._socket is not None:  # of which pyserial says no more than that one byte is waiting
+                ready, _, _ = select.select([self._socket], [], [], 0.0)
+                return self._socket.recv(_MOST) if ready else b""
             waiting = self._port.in_waiting
             if waiting:
                 more: bytes = self._port.read(min(waiting, _MOST))
@@ -91,12 +97,10 @@ class Link:
 
     def close(self) -> None:
         """Close the port; a port that is gone already is no error."""
-        # pyserial leaves the socket open when the other side has gone first
-        beneath = getattr(self._port, "_socket", None)
         with contextlib.suppress(*LINK_ERRORS), self._whole():
             self._port.close()
-        if beneath is not None:
-            beneath.close()
+        if self._socket is not None:  # which pyserial leaves open when the other side has gone first
+            self._socket.close()
 
 
 def open_link(url: str, log: WireLog | None = None, clock: Clock | None = None) -> Link:
