@@ -30,7 +30,7 @@ ORDER = (
     {"run", "box"},  # a run is followed through its box
     {"records"},
     {"recording"},
-    {"bench", "zeroing"},
+    {"bench", "zeroing", "calibrating"},
     {"cli"},
 )
 RANK = {name: rank for rank, names in enumerate(ORDER) for name in names}

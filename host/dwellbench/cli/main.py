@@ -24,6 +24,7 @@ COMMANDS = {
     "records": "records",
     "limits": "limits",
     "zero": "zero",
+    "calibrate": "calibrate",
 }
 
 _EPILOG = """

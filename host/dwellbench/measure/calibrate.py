@@ -97,7 +97,7 @@ class _Currents:
 
     def __init__(self, raw: RawTrace, calibration: Calibration) -> None:
         self.unzeroed: list[tuple[int, int]] = []
-        zeros = _zeros(raw)
+        zeros = zeros_of(raw)
         size = len(raw)
         self.per_code, self.offset, self.u_A = np.ones(size), np.zeros(size), np.zeros(size)
         for (shunt, fine), scale in calibration.amps.items():
@@ -122,7 +122,7 @@ class _Currents:
         return np.asarray((codes - self.offset) * self.per_code)
 
 
-def _zeros(raw: RawTrace) -> dict[tuple[int, int], tuple[float, float]]:
+def zeros_of(raw: RawTrace) -> dict[tuple[int, int], tuple[float, float]]:
     """Offset and its standard uncertainty in codes by (shunt, range), from settled auto-zero rows."""
     names = code_names("stages")
     zero = next(code for code, name in names.items() if name == "zero")

@@ -8,7 +8,7 @@ threshold.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import asdict, dataclass, replace
 from math import sqrt
 from typing import Any
 
@@ -19,6 +19,8 @@ from dwellbench.measure.zero import Zero
 SCHEMA = 1
 NOMINAL = "nominal"
 
+_PLAIN = ("per_code", "offset_code", "u_rel", "u_offset_code")
+
 # The converter's own limits, each range (SBAS444, SBAS563: gain 0.15 %, offset 3 codes at most).
 _CONVERTER_GAIN = 0.0015
 _CONVERTER_OFFSET_CODE = 3.0
@@ -26,12 +28,24 @@ _CONVERTER_OFFSET_CODE = 3.0
 
 @dataclass(frozen=True)
 class Scale:
-    """One channel on one full scale: value = (code - offset_code) * per_code, `u_rel` of the scale."""
+    """One channel on one full scale: value = (code - offset_code) * per_code, `u_rel` of the scale.
+
+    A fitted one says more: the correlation `r` of its line's two parameters, the part of `u_rel` that its points had in common,
+    and how many they were.
+    """
 
     per_code: float
     offset_code: float
     u_rel: float
     u_offset_code: float
+    r: float = 0.0
+    common_rel: float = 0.0
+    points: int = 0
+
+    def as_json(self) -> dict[str, float]:
+        """The members, those of a fitted scale only where it is one."""
+        own = asdict(self)
+        return own if self.points else {name: own[name] for name in _PLAIN}
 
 
 @dataclass(frozen=True)
@@ -85,6 +99,32 @@ class Calibration:
                 remedy="Calibrate the box again, or restore its last calibration.",
             ) from None
 
+    def as_json(self) -> dict[str, Any]:
+        """The document that the box keeps; `from_json` reads it back."""
+        box = reference_box()
+        millivolts = [round(volts * 1e3) for volts in box.ranges_V]
+
+        def pair(scales: tuple[Scale, Scale]) -> list[dict[str, float]]:
+            return [{"range_mv": mv, **scale.as_json()} for mv, scale in zip(millivolts, scales, strict=True)]
+
+        return {
+            "schema": SCHEMA,
+            "id": self.id,
+            "box": self.box,
+            "made_utc": self.made_utc,
+            "valid_days": self.valid_days,
+            "temperature_C": self.temperature_C,
+            "volts": pair(self.volts),
+            "supply": pair(self.supply),
+            "amps": [
+                {"shunt_ohm": round(box.shunts_ohm[shunt]), "range_mv": millivolts[fine], **scale.as_json()}
+                for (shunt, fine), scale in sorted(self.amps.items())
+            ],
+            "fixture_ohm": self.fixture_ohm,
+            "u_fixture_rel": self.u_fixture_rel,
+            "zeros": [zero.as_json() for zero in self.zeros],
+        }
+
     @classmethod
     def _read(cls, data: Mapping[str, Any]) -> Calibration:
         if data["schema"] != SCHEMA:
@@ -130,6 +170,9 @@ def _scale(row: Mapping[str, Any]) -> Scale:
         offset_code=float(row.get("offset_code", 0.0)),
         u_rel=float(row["u_rel"]),
         u_offset_code=float(row.get("u_offset_code", 0.0)),
+        r=float(row.get("r", 0.0)),
+        common_rel=float(row.get("common_rel", 0.0)),
+        points=int(row.get("points", 0)),
     )
     if not (scale.per_code > 0.0 and scale.u_rel >= 0.0 and scale.u_offset_code >= 0.0):
         raise ValueError("a scale is not positive")
