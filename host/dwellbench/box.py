@@ -23,6 +23,7 @@ from dwellbench.run import EVENT_S, Run, stopped, unproven
 from dwellbench.wire.conversation import Conversation
 from dwellbench.wire.core import Notice
 from dwellbench.wire.said import fault
+from dwellbench.wire.schemas import compile_all
 
 _ENDED_BY_ABORT = ("charge", "dwell", "measure", "form", "recovery")
 WAKE_S = 180.0  # proving discharge after power-up takes half a minute at most
@@ -168,6 +169,7 @@ class Box(Conversation):
         the box still keeps of it from its beginning.
         """
         self.know_again()
+        compile_all()
         status = self.status()
         again = status["run_key"] == plan.run_key
         try:
