@@ -113,6 +113,7 @@ FAULT_RESET_IN_RUN = const(25)
 FAULT_ILLEGAL_MOVE = const(26)
 FAULT_NOT_DISCHARGED = const(27)
 FAULT_BOARD = const(28)
+FAULT_SHUNT = const(29)
 FAULTS = (
     "none",
     "lid_open",
@@ -143,6 +144,7 @@ FAULTS = (
     "illegal_move",
     "not_discharged",
     "board",
+    "shunt",
 )
 
 # channels

@@ -27,6 +27,7 @@ from .stages.empty import Empty
 from .stages.hold import Hold
 from .stages.look import Look
 from .stages.nudge import Nudge
+from .stages.probe import Probe, ProbeVerdict
 from .stages.prove import Prove
 from .stages.zero import Zero
 
@@ -42,6 +43,7 @@ class Runner:
         self.end = END_COMPLETE
         self.fault = 0
         self.bleed = Bleed()
+        probe = Probe()
         # state: the event when its stages are through, then (stage code, stage) in order
         self._plan = {
             CHARGE: (
@@ -53,7 +55,12 @@ class Runner:
                 (ST_CHARGE, Charge()),
             ),
             DWELL: (EV_HELD, (ST_DWELL, Hold())),
-            MEASURE: (EV_ACCOUNTED, (ST_MEASURE, Nudge())),
+            MEASURE: (
+                EV_ACCOUNTED,
+                (ST_MEASURE, probe),
+                (ST_MEASURE, Nudge()),
+                (ST_MEASURE, ProbeVerdict(probe)),
+            ),
             DISCHARGE: (EV_EMPTIED, (ST_DISCHARGE, self.bleed)),
         }
         self._row = None

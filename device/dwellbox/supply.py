@@ -48,7 +48,7 @@ class Supply:
         self._changed_ms = now
 
     def ramp(self, goal_mv, per_s, now):
-        """Ramp from the present setting to `goal_mv` at `per_s` millivolts a second, and switch on."""
+        """Ramp from the present setting to `goal_mv`, up or down, at `per_s` millivolts a second, and switch on."""
         self.on = True
         self.ramping = True
         self._goal_mv = goal_mv
@@ -70,10 +70,14 @@ class Supply:
         """Move the ramp on and write the setting; pump if the supply is wanted."""
         if self.ramping:
             gone = ticks_diff(now, self._base_ms)
-            mv = self._base_mv + self._per_s // 10 * gone // 100
-            if mv >= self._goal_mv:
+            moved = self._per_s * gone // 1000 if self._per_s < 2000 else self._per_s // 10 * gone // 100
+            if moved >= abs(self._goal_mv - self._base_mv):
                 mv = self._goal_mv
                 self.ramping = False
+            elif self._goal_mv > self._base_mv:
+                mv = self._base_mv + moved
+            else:
+                mv = self._base_mv - moved
             self.mv = mv
             self._changed_ms = now
         self._board.supply_mv(self.mv)
