@@ -184,3 +184,25 @@ def _wait(done: object, most_s: float = 30.0) -> None:
     while not done():  # type: ignore[operator]
         assert time.monotonic() < until, "waited too long"
         time.sleep(0.05)
+
+
+@pytest.mark.parametrize(
+    ("which", "position"), [("low", "rest"), ("low", "work"), ("mid", "rest"), ("mid", "work")]
+)
+@pytest.mark.parametrize("at_s", [0.0, 7.0])
+@pytest.mark.parametrize(
+    ("marking", "body"),
+    [
+        ("47n 630V film", "capacitance_F = 47e-9\nleakage_ohm = 2e9\n"),
+        ("100n 400V paper", "capacitance_F = 100e-9\nleakage_ohm = 2e8\n"),
+    ],
+)
+def test_a_shunt_relay_that_sticks_never_makes_a_leaky_part_fit(
+    tmp_path: Path, marking: str, body: str, at_s: float, which: str, position: str
+) -> None:
+    """A leak of 150 nA or 1.5 uA that would read ten to a thousand times too small."""
+    stuck = fault("shunt_relay_stuck", at_s, which=f'"{which}"', position=f'"{position}"')
+    with ready(scenario(tmp_path, body, extra=stuck) + "?seed=5") as box:
+        outcome = box.test(marking, "coupling@300V/470k")
+        assert outcome.verdict != "fit"
+        assert not truth(box).hurt
