@@ -233,7 +233,9 @@ def test_without_a_command_it_says_what_there_is(run: Run) -> None:
         assert "list" in out or "test" in out
 
 
-def test_a_port_with_nothing_plugged_in_is_not_taken_for_the_box(run: Run, monkeypatch: pytest.MonkeyPatch) -> None:
+def test_a_port_with_nothing_plugged_in_is_not_taken_for_the_box(
+    run: Run, monkeypatch: pytest.MonkeyPatch
+) -> None:
     monkeypatch.setattr("dwellbench.cli.reach.ports", lambda: [{"url": "/dev/ttyS0", "what": "n/a"}])
     status, _, err = run("box")
     assert status == 7
