@@ -8,7 +8,7 @@ call returns, unless `proven` says otherwise: then the box still holds the lid l
 from __future__ import annotations
 
 from collections import deque
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from datetime import UTC, datetime
 from typing import TYPE_CHECKING, Any
 
@@ -45,6 +45,9 @@ class Run:
         self.proven = False  # the part was proven discharged when it was over
         self._ended_s = 0.0
         self._stopping = False
+        self.while_stopping: Callable[[Notice], None] | None = (
+            None  # sees what comes when nobody iterates any more
+        )
         self._given: deque[Notice] = deque()
 
     def __iter__(self) -> Iterator[Notice]:
@@ -143,6 +146,15 @@ class Run:
             self._box.abort()
         while not self.over:
             self._next()
+            self._tell()
+
+    def _tell(self) -> None:
+        if self.while_stopping is None or not self._given:
+            return
+        try:
+            self.while_stopping(self._given[-1])
+        except Exception:  # whoever watches must not keep the part from being seen discharged
+            self.while_stopping = None
 
     def _interrupted(self) -> None:
         try:

@@ -240,4 +240,4 @@ def test_a_port_with_nothing_plugged_in_is_not_taken_for_the_box(
     status, _, err = run("box")
     assert status == 7
     assert "No box is connected" in err
-    assert "emu://film" in err
+    assert "emu://demo" in err

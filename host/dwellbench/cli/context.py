@@ -7,6 +7,7 @@ environment, the configuration file.
 from __future__ import annotations
 
 import json
+import sys
 import tomllib
 from collections.abc import Callable
 from dataclasses import dataclass, field
@@ -32,6 +33,7 @@ class Options:
     box: str | None = None
     records: Path | None = None
     json: bool = False
+    streams: bool = False
     wire_log: Path | None = None
     config: Path | None = None
     places: dict[str, str] = field(default_factory=dict)
@@ -48,7 +50,8 @@ class Options:
 
     def document(self, value: dict[str, Any], *, line: bool = False) -> None:
         """A JSON document (or one line of a stream) on standard output."""
-        click.echo(json.dumps(value, indent=None if line else 2, ensure_ascii=False))
+        plain = "utf" not in (sys.stdout.encoding or "").lower()  # a pipe that cannot carry every letter
+        click.echo(json.dumps(value, indent=None if line else 2, ensure_ascii=plain))
 
     def console(self) -> Console:
         """Rich output for people, on the same stream as `say`."""

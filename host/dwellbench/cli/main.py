@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import io
 import os
 import sys
 from collections.abc import Sequence
@@ -26,6 +27,7 @@ COMMANDS = {
     "zero": "zero",
     "calibrate": "calibrate",
 }
+STREAMS = ("demo", "emulate")  # with --json these print lines that carry `event`, an error's too
 
 _EPILOG = """
 Exit status: 0 done (test, analyse: fit), 3 unfit, 4 undecided, 2 wrong usage or input, 5 the box refused, 6 fault or lockout,
@@ -55,6 +57,7 @@ class Table(click.Group):
     ) -> tuple[str | None, click.Command | None, list[str]]:
         """Say what there is when a command is not known."""
         name = args[0] if args else ""
+        ctx.obj.streams = name in STREAMS
         if name not in COMMANDS and not name.startswith("-"):
             raise UsageError(
                 f"There is no command {name!r}.",
@@ -67,7 +70,7 @@ class Table(click.Group):
     cls=Table,
     epilog=_EPILOG,
     invoke_without_command=True,
-    context_settings={"help_option_names": ["-h", "--help"]},
+    context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 110},
 )
 @click.version_option(__version__, prog_name="dwellbench")
 @global_options
@@ -77,10 +80,16 @@ def cli(ctx: click.Context, /, **given: Any) -> None:
 
     Try it without a box: dwellbench demo, or dwellbench --box emu://film test "47n 630V film" --role coupling --yes
     """
-    ctx.obj = Options()
     take(ctx.obj, given)
     if ctx.invoked_subcommand is None:
-        click.echo(ctx.get_help())
+        tell_commands(ctx)
+
+
+def tell_commands(ctx: click.Context) -> None:
+    """Say what commands there are, to people; a script gets an error for leaving its command out."""
+    if ctx.obj.json:
+        raise UsageError("No command was given.", remedy=f"See {ctx.command_path} --help.")
+    click.echo(ctx.get_help())
 
 
 def ready(ctx: click.Context, given: dict[str, Any]) -> Options:
@@ -93,6 +102,11 @@ def ready(ctx: click.Context, given: dict[str, Any]) -> Options:
 
 def main(arguments: Sequence[str] | None = None) -> None:
     """Run, and leave with the documented status."""
+    for stream in (sys.stdout, sys.stderr):
+        if isinstance(stream, io.TextIOWrapper):
+            stream.reconfigure(
+                errors="replace"
+            )  # a letter that the terminal does not have is no reason to fail
     sys.exit(run(list(sys.argv[1:] if arguments is None else arguments)))
 
 
@@ -100,23 +114,32 @@ def run(arguments: list[str]) -> int:
     """Run a command line and return its status; never a traceback."""
     options = Options(json="--json" in arguments)
     try:
-        status = cli.main(arguments, prog_name="dwellbench", standalone_mode=False)
+        status = cli.main(arguments, prog_name="dwellbench", standalone_mode=False, obj=options)
+        sys.stdout.flush()
     except DwellbenchError as error:
         return _failed(options, error)
     except click.exceptions.Exit as leave:
         return int(leave.exit_code)
     except click.ClickException as error:
-        return _failed(options, UsageError(error.format_message(), remedy="See --help."))
+        return _failed(options, _usage(error))
     except (click.Abort, KeyboardInterrupt):
         return _failed(options, StoppedError("Stopped by you; nothing was energised by this command."))
-    except BrokenPipeError:
-        os.dup2(
-            os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno()
-        )  # the reader has gone: nothing more to say
-        return 0
+    except (BrokenPipeError, SystemExit):  # click leaves by the second when a pipe breaks, and then only
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return StoppedError.exit  # whoever read has gone: nothing more to say, and no verdict was told
     except Exception as error:
         return _failed(options, _bug(error))
     return status if isinstance(status, int) else 0
+
+
+def _usage(error: click.ClickException) -> UsageError:
+    words = error.format_message()
+    where = error.ctx.command_path if isinstance(error, click.UsageError) and error.ctx else "dwellbench"
+    if "extra argument" in words:
+        return UsageError(
+            words, remedy=f'Put a marking in quotes, as in "47n 630V film". See {where} --help.'
+        )
+    return UsageError(words, remedy=f"See {where} --help.")
 
 
 def _bug(error: Exception) -> BugError:
@@ -136,7 +159,9 @@ def _bug(error: Exception) -> BugError:
 def _failed(options: Options, error: DwellbenchError) -> int:
     if options.json:
         document = error.as_json()
-        options.document({"event": "error", **document} if getattr(error, "stream", False) else document)
+        options.document(
+            {"event": "error", **document} if options.streams else document, line=options.streams
+        )
     else:
         click.echo(f"dwellbench: {error.message}", err=True)
         for reading in error.details.get("readings", []):

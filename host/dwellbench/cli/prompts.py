@@ -21,7 +21,9 @@ def interactive() -> bool:
 
 
 def ask_ready(options: Options, what: str, *, yes: bool) -> None:
-    """Ask that the part is in and the lid closed. UsageError when nobody can answer."""
+    """Say the cautions, and ask that the part is in and the lid closed. UsageError when nobody can answer."""
+    for line in CAUTIONS:
+        options.say(line)
     if yes:
         return
     if not interactive():
@@ -29,6 +31,4 @@ def ask_ready(options: Options, what: str, *, yes: bool) -> None:
             "There is no terminal to answer on.",
             remedy="Give --yes when the part is in and the lid is closed.",
         )
-    for line in CAUTIONS:
-        options.say(line)
     click.prompt(f"{what} Then press Enter", default="", show_default=False, err=options.json)

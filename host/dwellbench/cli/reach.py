@@ -8,7 +8,7 @@ from dwellbench.errors import NoBoxError
 from dwellbench.records import Store
 from dwellbench.wire.link import ports
 
-_HINT = "Connect it, or name it with --box URL. Without a box, try --box emu://film."
+_HINT = "Connect it, or name it with --box URL. Without hardware, try it with --box emu://demo."
 
 
 def connect(options: Options) -> Bench:
@@ -32,6 +32,13 @@ def _only_port() -> str:
             f"There are several ports: {', '.join(found)}.", remedy="Say which is the box's with --box."
         )
     return found[0]
+
+
+def settle(options: Options, box: Bench) -> None:
+    """Wait for the box to be at rest, and say so when that takes a while."""
+    if box.status()["state"] not in ("rest", "lockout"):
+        options.say("The box first proves that nothing is charged; that takes up to half a minute.")
+    box.settle()
 
 
 def open_store(options: Options) -> Store:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dwellbench.judging.say import si
+from dwellbench.judging.say import si, with_doubt
 from dwellbench.outcome import Outcome
 from dwellbench.quantity import Quantity
 
@@ -17,14 +17,18 @@ _NEXT = {
 }
 
 
+# what an unfit part is, for the hand that holds it: one that may only be dirty, or badly clipped, is not yet for the bin
+_UNFIT = {"scrap": "SCRAP", "other_place": "NOT HERE"}
+
+
 def word(outcome: Outcome) -> str:
-    """USE, SCRAP, RE-FORM or NOT SURE."""
+    """USE, SCRAP, RE-FORM or NOT SURE; NOT HERE for a part that only this place cannot take."""
     if outcome.next == "re_form_then_test":
         return "RE-FORM"
     if outcome.verdict == "fit":
         return "USE"
     if outcome.verdict == "unfit":
-        return "SCRAP" if outcome.next == "scrap" else "NOT HERE"
+        return _UNFIT.get(outcome.next or "", "NOT SURE")
     return "NOT SURE"
 
 
@@ -36,13 +40,13 @@ def next_words(outcome: Outcome) -> str:
 
 
 def quantity(value: Quantity | None, unit: str) -> str:
-    """A quantity with its doubt: "47.7 nF \u00b1 0.2 nF", "above 512 Gohm", or "not determined"."""
+    """A quantity with its doubt: "47.70 \u00b1 0.22 nF", "above 512 Gohm", or "not determined"."""
     if value is None:
         return "not determined"
     if value.value is not None and value.low is not None and value.high is not None:
         half = (value.high - value.low) / 2
         if half <= 0.3 * abs(value.value):
-            return f"{si(value.value, unit)} \u00b1 {si(half, unit, 2)}"
+            return with_doubt(value.value, half, unit)
         return f"{si(value.value, unit)}, between {si(value.low, unit, 2)} and {si(value.high, unit, 2)}"
     if value.value is not None:
         return si(value.value, unit)
@@ -62,14 +66,8 @@ _SHOWN = (
 
 
 def lines(outcome: Outcome) -> list[str]:
-    """The outcome in lines of text."""
-    following = next_words(outcome)
-    told = [
-        "",
-        f"    {word(outcome)}" + (f"  -  {following}" if following else ""),
-        "",
-        f"{outcome.verdict}: {outcome.reason}",
-    ]
+    """The outcome in lines of text, below its one word."""
+    told = [f"{outcome.verdict}: {outcome.reason}"]
     if outcome.test_V is not None:
         told.append(f"Tested at {outcome.test_V:.0f} V for {outcome.dwell_s or 0:.0f} s.")
     told += [

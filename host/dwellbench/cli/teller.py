@@ -14,6 +14,9 @@ from dwellbench.wire.codes import names
 from dwellbench.wire.core import Notice
 
 SAFE_V = 30.0
+STOPPING = (
+    "Stopping: the box empties the part and proves it. A second Ctrl-C leaves without waiting for that."
+)
 _VOLTS_A_CODE = (1.024 / 32768 * 1001, 0.256 / 32768 * 1001)
 _STAGE, _NV, _SV, _VRANGE, _T = 2, 5, 6, 17, 1
 
@@ -41,6 +44,7 @@ class Teller:
         self.volts = 0.0
         self.stage = "zero"
         self.state = "charge"
+        self.stopping = False
         self._t_ms = 0
         self._stage_ms = 0
         self._proven = False
@@ -69,6 +73,8 @@ class Teller:
         """How things stand now."""
         doing, following = _SENTENCES.get(self.stage, ("", ""))
         target = f"{self._plan.volts_V:.0f} V"
+        if self.stopping and not self._proven:
+            return Told(self._on_part(), doing.format(target=target), "", STOPPING)
         return Told(
             self._on_part(), doing.format(target=target), self._left(), following.format(target=target)
         )

@@ -10,7 +10,7 @@ from rich.padding import Padding
 from rich.text import Text
 
 from dwellbench.cli.context import Options
-from dwellbench.cli.teller import Teller, Told
+from dwellbench.cli.teller import STOPPING, Teller, Told
 from dwellbench.plan import Plan
 from dwellbench.run import Run
 from dwellbench.wire.core import Notice
@@ -45,6 +45,7 @@ class View:
     def began(self, plan: Plan, run: Run) -> None:
         """The box has accepted the plan."""
         self._teller = Teller(plan, run.estimate_s)
+        run.while_stopping = lambda notice: self._stopping(notice, run)
         if self._live is None:
             self._options.say(f"{self._title}: the box has begun; about {run.estimate_s:.0f} s.")
 
@@ -55,9 +56,19 @@ class View:
             return
         changed = teller.take(notice, run)
         if self._live is not None:
-            self._live.update(drawn(self._title, teller.told()))
+            self._live.update(drawn(self._title, teller.told()), refresh=changed)  # no stage passes unseen
         elif changed or self._due(notice):
             self._options.say("  " + " ".join(teller.told().lines()))
+
+    def _stopping(self, notice: Notice, run: Run) -> None:
+        """The same while the user's stop is under way, which must be told: it takes its time."""
+        if self._teller is not None and not self._teller.stopping:
+            self._teller.stopping = True
+            if self._live is None:
+                self._options.say(f"  {STOPPING}")
+            else:
+                self._live.update(drawn(self._title, self._teller.told()), refresh=True)
+        self.happened(notice, run)
 
     def _due(self, notice: Notice) -> bool:
         if notice.method != "samples":

@@ -7,6 +7,7 @@ from dataclasses import dataclass, field
 import numpy as np
 
 from dwellbench.limits.decide import Thresholds
+from dwellbench.limits.demands import place_volts
 from dwellbench.limits.place import Place
 from dwellbench.measure.estimates import Estimates
 from dwellbench.measure.leakage import Leakage
@@ -86,12 +87,7 @@ class Case:
     @property
     def place_V(self) -> float | None:
         """The place's voltage: as the role gave it, else its usual one as far as the part's rating goes."""
-        if self.place is None:
-            return None
-        if self.place.given_V is not None or self.place.volts_V is None:
-            return self.place.given_V
-        rated_V = self.part.rated_V if self.part.rated_kind == "dc" else None
-        return self.place.volts_V if rated_V is None else min(self.place.volts_V, rated_V)
+        return None if self.place is None else place_volts(self.place, self.part)
 
     @property
     def temperature_C(self) -> float | None:

@@ -49,7 +49,9 @@ def not_tested(case: Case) -> tuple[str, ...]:
 def notes(case: Case, found: list[Finding]) -> tuple[str, ...]:
     """Sentences beside the numbers."""
     told = [
-        f"Capacitance is a direct-current value: the charge for {volts(case.test_V)}, fast absorption included.",
+        "Capacitance is a direct-current value: the charge"
+        + (f" for {volts(case.test_V)}" if case.test_V is not None else "")
+        + ", fast absorption included.",
         f"Total current {seconds(case.estimates.dwell_s or 0.0)} after the voltage was in.",
     ]
     told += _zero(case)

@@ -13,7 +13,7 @@ def si(value: float | None, unit: str, figures: int = 3) -> str:
         return "unknown"
     if value == 0.0:
         return f"0 {unit}"
-    step = min(max(3 * floor(log10(abs(value) * (1 + 1e-12)) / 3), -15), 15)
+    step = _step(value)
     number = f"{value / 10.0**step:.{figures}g}"
     if abs(float(number)) >= 1000.0 and step < 15:  # rounding carried it into the next prefix
         step += 3
@@ -21,6 +21,19 @@ def si(value: float | None, unit: str, figures: int = 3) -> str:
     if "e" in number:
         number = f"{float(number):.0f}"
     return f"{number} {_PREFIXES[step]}{unit}"
+
+
+def with_doubt(value: float, half: float, unit: str) -> str:
+    """Value and half width in one unit, the half width to two figures (JCGM 100:2008, 7.2.6): "48.00 \u00b1 0.22 nF"."""
+    step = 0 if value == 0.0 else _step(value)
+    value, half = value / 10.0**step, half / 10.0**step
+    places = min(max(1 - floor(log10(half)), 0), 6) if half > 0.0 else 0
+    return f"{value:.{places}f} \u00b1 {half:.{places}f} {_PREFIXES[step]}{unit}"
+
+
+def _step(value: float) -> int:
+    """The power of a thousand, as a power of ten, that leaves one to three digits before the point."""
+    return min(max(3 * floor(log10(abs(value) * (1 + 1e-12)) / 3), -15), 15)
 
 
 def volts(value: float | None) -> str:

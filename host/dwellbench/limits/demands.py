@@ -33,6 +33,14 @@ class Demand:
     warmed: float
 
 
+def place_volts(place: Place, part: Part) -> float | None:
+    """The voltage a part meets there: as the role gave it, else the kind's usual one as far as the rating goes."""
+    if place.given_V is not None or place.volts_V is None:
+        return place.given_V
+    rated_V = part.rated_V if part.rated_kind == "dc" else None
+    return place.volts_V if rated_V is None else min(place.volts_V, rated_V)
+
+
 def least_ohm(place: Place) -> float | None:
     """Insulation that the place needs, ohms, at its working temperature; None when it is not judged by
     insulation.

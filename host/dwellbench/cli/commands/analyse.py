@@ -7,11 +7,11 @@ from typing import Any
 
 import click
 
-from dwellbench.cli import say
 from dwellbench.cli.budget import show_budgets
-from dwellbench.cli.commands.test import chosen, tell_part
+from dwellbench.cli.commands.test import chosen, series_ohm, tell_part
 from dwellbench.cli.context import global_options
 from dwellbench.cli.main import ready
+from dwellbench.cli.verdict import tell_outcome
 from dwellbench.errors import UsageError
 from dwellbench.judge import analyse
 from dwellbench.measure.csv_read import read_csv
@@ -40,7 +40,7 @@ Exit status: 0 fit, 3 unfit, 4 undecided, 2 wrong input.
 )
 @click.option("--role", metavar="PLACE", help="coupling, coupling@310V/470k, ... or any.")
 @click.option("--grade", type=click.Choice(GRADES), default="new", show_default=True, help="Which limits.")
-@click.option("--esr", type=float, metavar="OHM", help="Series resistance measured elsewhere.")
+@series_ohm
 @click.option("--section", type=int, metavar="N", help="Which section of a can, counted from 1.")
 @click.option("--budget", is_flag=True, help="What makes up the uncertainty of every quantity.")
 @global_options
@@ -64,8 +64,7 @@ def command(ctx: click.Context, /, **given: Any) -> int:
     if options.json:
         options.document(outcome.as_json(budgets=given["budget"]))
     else:
-        for line in say.lines(outcome):
-            options.say(line)
+        tell_outcome(options, outcome)
         if given["budget"]:
             show_budgets(options, outcome)
     return outcome.exit_status

@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 import signal
+from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
+from threading import Event
 from typing import Any
 
 import click
 
-from dwellbench.cli.context import global_options
+from dwellbench.cli.context import Options, global_options
 from dwellbench.cli.main import ready
 from dwellbench.emulator.opening import INTERPRETERS, Opening
 from dwellbench.emulator.outlet_pty import Pty
@@ -73,25 +76,41 @@ def command(ctx: click.Context, /, **given: Any) -> int:
         )
     opening = Opening(given["scenario"], given["seed"], given["state"], given["interpreter"])
     outlet = _outlet(given)
-    try:
-        box = opening.make(time_scale=given["speed"])
-    except BaseException:
-        outlet.close()
-        raise
-    signal.signal(signal.SIGTERM, _interrupt)
-    name = given["pty"] if given["pty"] is not None else getattr(outlet, "name", "")
+    with _asked_to_end() as ended:
+        try:
+            box = opening.make(time_scale=given["speed"])
+        except BaseException:
+            outlet.close()
+            raise
+        name = given["pty"] if given["pty"] is not None else getattr(outlet, "name", "")
+        _tell(options, name, given)
+        serve(box, outlet, given["speed"], stop=ended.is_set, on_end=lambda: opening.leave(box))
+    if options.json:
+        options.document({"event": "summary", "url": str(name), "virtual_s": round(box.now_s, 3)}, line=True)
+    return 0
+
+
+def _tell(options: Options, name: object, given: dict[str, Any]) -> None:
     if options.json:
         options.document({"event": "serving", "url": str(name)}, line=True)
     else:
         options.say(
             f"An emulated box is at {name} (scenario {given['scenario']}, speed {given['speed']:g}). Ctrl-C ends it."
         )
-    serve(box, outlet, given["speed"], on_end=lambda: opening.leave(box))
-    return 0
 
 
-def _interrupt(number: int, frame: object) -> None:
-    raise KeyboardInterrupt
+@contextmanager
+def _asked_to_end() -> Iterator[Event]:
+    """Set by Ctrl-C or SIGTERM: between two periods, never in one, and always with the outlet closed in order."""
+    ended = Event()
+    before = {number: signal.getsignal(number) for number in (signal.SIGINT, signal.SIGTERM)}
+    for number in before:
+        signal.signal(number, lambda *_: ended.set())
+    try:
+        yield ended
+    finally:
+        for number, handler in before.items():
+            signal.signal(number, handler)
 
 
 def _outlet(given: dict[str, Any]) -> Outlet:

@@ -7,16 +7,17 @@ from typing import Any
 import click
 from rich.table import Table
 
-from dwellbench.cli.context import global_options
-from dwellbench.cli.main import ready
+from dwellbench.cli.context import global_options, take
+from dwellbench.cli.main import ready, tell_commands
 from dwellbench.cli.reach import open_store
 from dwellbench.errors import UsageError
 from dwellbench.outcome import VERDICTS
 
 
 @click.group("records", invoke_without_command=True)
+@global_options
 @click.pass_context
-def command(ctx: click.Context) -> None:
+def command(ctx: click.Context, /, **given: Any) -> None:
     """Look into the records: list, show.
 
     \b
@@ -24,8 +25,9 @@ def command(ctx: click.Context) -> None:
       dwellbench records list --verdict unfit --text paper
       dwellbench records show R17 --json
     """
+    take(ctx.obj, given)
     if ctx.invoked_subcommand is None:
-        click.echo(ctx.get_help())
+        tell_commands(ctx)
 
 
 _LIST = """List records, newest first.

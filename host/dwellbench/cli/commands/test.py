@@ -8,16 +8,16 @@ from typing import Any
 import click
 
 from dwellbench import bench
-from dwellbench.cli import say
 from dwellbench.cli.budget import show_budgets
 from dwellbench.cli.context import Options, global_options
+from dwellbench.cli.dry_run import tell_plan
 from dwellbench.cli.main import ready
 from dwellbench.cli.prompts import ask_ready
-from dwellbench.cli.reach import connect, open_store
+from dwellbench.cli.reach import connect, open_store, settle
+from dwellbench.cli.verdict import tell_outcome
 from dwellbench.cli.view import View
 from dwellbench.errors import UsageError
 from dwellbench.limits.place import Place
-from dwellbench.limits.table import limits_for
 from dwellbench.part import Part
 from dwellbench.plan import GRADES, Plan, Ratings
 
@@ -31,7 +31,8 @@ Examples
   dwellbench test "47n 630V film" --role coupling
   dwellbench test ".1 MFD 400V paper" --role coupling@310V/470k
   dwellbench test "20 MFD 450V electrolytic" --dwell 300
-  dwellbench --box emu://film test "47n 630V film" --role coupling --yes     (without a box)
+  dwellbench --box emu://film test "47n 630V film" --role coupling --yes
+      (without a box)
 
 With --dwell auto the run ends as soon as the verdict of the whole dwell is certain enough, never before ten seconds, never for
 paper, electrolytics or unknown kinds, and on any sign of activity the whole time is held. Steady leaks are found as surely; a part
@@ -41,9 +42,25 @@ The box puts up to 650 V on the part: loose parts only, lid closed, your local c
 leaking or cracked part is not energised. Afterwards fit a shorting wire before you lift the part out, and store it shorted.
 
 \b
-Exit status: 0 fit, 3 unfit, 4 undecided, 2 wrong input, 5 refused by the box, 6 fault, 7 no box or link lost, 8 records
-unusable, 130 stopped by you after proven discharge.
+Exit status: 0 fit, 3 unfit, 4 undecided, 2 wrong input, 5 refused by the box,
+6 fault, 7 no box or link lost, 8 records unusable, 130 stopped by you after
+proven discharge.
 """
+
+
+def _ohms(ctx: click.Context, parameter: click.Parameter, value: float | None) -> float | None:
+    if value is not None and not 0.0 <= value < 1e9:  # not a number is neither
+        raise UsageError(f"{value:g} ohm is no series resistance.", remedy="Say, for example, --esr 2.5.")
+    return value
+
+
+series_ohm = click.option(
+    "--esr",
+    type=float,
+    metavar="OHM",
+    callback=_ohms,
+    help="Series resistance measured elsewhere; it goes into the outcome.",
+)
 
 
 @click.command("test", help=_HELP)
@@ -64,9 +81,7 @@ unusable, 130 stopped by you after proven discharge.
     show_default=True,
     help="Which limits: of a new part, its period's, aged.",
 )
-@click.option(
-    "--esr", type=float, metavar="OHM", help="Series resistance measured elsewhere; it goes into the record."
-)
+@series_ohm
 @click.option(
     "--looks", metavar="WORD", help=f"How it looks: {', '.join(bench.LOOKS)}. Only a sound part is energised."
 )
@@ -93,13 +108,13 @@ def command(ctx: click.Context, /, **given: Any) -> int:
     place = Place.parse(role)
     tell_part(options, part)
     if given["dry_run"]:
-        return _dry_run(options, part, place, role, given)
+        return tell_plan(options, part, place, role, _plan(part, place, Ratings(), given), given["grade"])
     with open_store(options) as store, connect(options) as box:
         plan = _plan(part, place, box.ratings, given)
         for line in plan.explain():
             options.say(line)
         ask_ready(options, _ask(part), yes=given["yes"])
-        box.settle()
+        settle(options, box)
         with View(options, part.marking) as view:
             outcome = bench.test_part(
                 box,
@@ -119,8 +134,7 @@ def command(ctx: click.Context, /, **given: Any) -> int:
     if options.json:
         options.document(outcome.as_json(budgets=given["budget"]))
     else:
-        for line in say.lines(outcome):
-            options.say(line)
+        tell_outcome(options, outcome)
         if given["budget"]:
             show_budgets(options, outcome)
         options.say("Fit a shorting wire before you lift the part out, and store it shorted.")
@@ -170,35 +184,3 @@ def _seconds(text: str | None) -> float | None:
 def _ask(part: Part) -> str:
     way = " Its positive lead goes to the marked clip." if part.polar else ""
     return f"Fit {part.marking} and close the lid.{way}"
-
-
-def _dry_run(options: Options, part: Part, place: Place | None, role: str, given: dict[str, Any]) -> int:
-    plan = _plan(part, place, Ratings(), given)
-    ruling, informative = limits_for(part, part.capacitance_F, given["grade"])
-    limits = [
-        {"id": limit.id, "source": limit.source, "status": limit.status, "rules": limit in ruling}
-        for limit in (*ruling, *informative)
-    ]
-    if options.json:
-        document = {
-            "part": part.as_json(),
-            "role": role,
-            "plan": plan.to_wire(),
-            "explanation": plan.explain(),
-            "limits": limits,
-        }
-        options.document({**document, "energised": False})
-        return 0
-    options.say("Nothing is energised. The plan, for the reference box:")
-    for line in plan.explain():
-        options.say(f"  {line}")
-    if place is not None:
-        options.say(f"The place: {place.kind.what} ({place.role}); {place.kind.source}.")
-    options.say("Limits for such a part:")
-    for row in limits:
-        options.say(
-            f"  {row['id']}: {row['source']} ({row['status']}){'' if row['rules'] else ', informative'}"
-        )
-    if not limits:
-        options.say("  none are known for this kind; without a place the verdict will be undecided.")
-    return 0
