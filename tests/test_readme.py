@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+import os
 import re
 import shlex
+import subprocess
+import sys
 import tomllib
 from pathlib import Path
 
@@ -41,6 +44,31 @@ def test_a_command_of_readme_runs(
     monkeypatch.setenv("XDG_CONFIG_HOME", str(bench))
     status = cli.run(shlex.split(line)[1:])
     assert status in (0, 3, 4), capsys.readouterr().err
+
+
+@pytest.mark.skipif(sys.platform == "win32", reason="pseudo-terminals")
+def test_the_two_terminals_of_readme_find_each_other(
+    bench: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """As shown, but for the name of the pseudo-terminal and the speed: a minute of holding takes a second."""
+    (block,) = [block for kind, block in BLOCKS if kind == "sh" and "emulate --pty" in block]
+    serving, testing = (
+        shlex.split(line.replace("/tmp/bench", str(tmp_path / "bench")))[1:] for line in block.splitlines()
+    )
+    monkeypatch.setenv("DWELLBENCH_RECORDS", str(tmp_path / "records.db"))
+    monkeypatch.setenv("XDG_CONFIG_HOME", str(tmp_path))
+    monkeypatch.setenv("PYTHONPATH", os.pathsep.join(sys.path))
+    command = [sys.executable, "-c", "from dwellbench.cli.main import main; main()", *serving]
+    with subprocess.Popen([*command, "--speed", "60"], stdout=subprocess.PIPE) as server:
+        try:
+            assert server.stdout is not None
+            assert b"An emulated box is at" in server.stdout.readline()
+            status = cli.run(testing)
+        finally:
+            server.terminate()
+    assert status == 0, capsys.readouterr().err
+    assert "simulated" in capsys.readouterr().out
+    assert server.returncode == 0
 
 
 def test_the_python_example_runs(
