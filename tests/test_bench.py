@@ -136,7 +136,7 @@ def test_a_host_killed_in_mid_run_leaves_a_safe_box_and_every_sample_that_had_co
     environment = {**os.environ, "PYTHONPATH": os.pathsep.join(sys.path)}
     link, database = tmp_path / "bench", tmp_path / "r.db"
     run = "from dwellbench.cli.main import main; main()"
-    serve = [sys.executable, "-c", run, "emulate", "--pty", str(link), "--seed", "5", "--speed", "30"]
+    serve = [sys.executable, "-c", run, "emulate", "--pty", str(link), "--seed", "5", "--speed", "15"]
     with subprocess.Popen(serve, env=environment, stdout=subprocess.DEVNULL) as server:
         try:
             _wait(lambda: link.exists())
@@ -149,7 +149,7 @@ def test_a_host_killed_in_mid_run_leaves_a_safe_box_and_every_sample_that_had_co
             before = _kept(database)
             host.send_signal(signal.SIGKILL)
             host.wait()
-            time.sleep(0.5)  # fifteen seconds of the box's time: silence, then it empties the part by itself
+            time.sleep(1.0)  # fifteen seconds of the box's time: silence, then it empties the part by itself
             with open_box(str(link)) as box:
                 status = box.wait_for(lambda now: now["state"] == "rest", 60.0) or box.status()
                 assert (status["state"], status["safe"]) == ("rest", True), status

@@ -38,7 +38,7 @@ def served(tmp_path: Path) -> Iterator[Any]:
             "--seed",
             "3",
             "--speed",
-            "40",
+            "20",
             *arguments,
         ]
         process = subprocess.Popen(
@@ -58,7 +58,7 @@ def served(tmp_path: Path) -> Iterator[Any]:
 def test_a_run_over_tcp_and_a_client_that_goes_and_comes_back(served: Any) -> None:
     _, url = served("--tcp", "127.0.0.1:0")
     with open_box(url) as box:
-        assert box.identity.hello["time_scale"] == "40"
+        assert box.identity.hello["time_scale"] == "20"
         boot = box.identity.boot
     with open_box(url) as box:
         assert box.identity.boot == boot
