@@ -1,215 +1,171 @@
-"""The store: runs as they are written, found again, and every file that is not one."""
+"""The store: runs as they are written and found again, notes and outcomes that come later."""
 
 from __future__ import annotations
 
-import sqlite3
-import subprocess
-import sys
+import math
 from pathlib import Path
-from typing import Any
 
-import numpy as np
 import pytest
-from hypothesis import given
-from hypothesis import strategies as st
+from tests.records.contents import BOX, OTHER_BOX, OUTCOME, ROWS, begin, rows, whole
 
 from dwellbench.errors import StoreError, UsageError
-from dwellbench.records import RunWriter, Store
-from dwellbench.records.database import explained
-from dwellbench.records.packing import hash_of, pack, unpack
-
-ROWS = [
-    [n, n * 100, 6, 1, 0, 18, 163_000 + n, 9000, 9100, 20, -50 + n, -10, 10, 0, 8000, 16000, 0, 0]
-    for n in range(57)
-]
-
-
-def begin(store: Store, box: str = "0" * 16, **changes: Any) -> RunWriter:
-    """Begin a run with ordinary contents."""
-    contents: dict[str, Any] = {
-        "run_key": "key",
-        "part": {"marking": "47n 630V film"},
-        "role": "coupling",
-        "grade": "new",
-        "plan": {"volts_V": 630.0},
-        "box": {"box": box, "model": "reference", "firmware": "0.1.0", "build": "00000000"},
-        "calibration": {"id": "abc"},
-        "simulated": True,
-    }
-    return store.begin_run(**{**contents, **changes})
+from dwellbench.records import Store
 
 
 def test_what_is_written_is_found(tmp_path: Path) -> None:
     with Store(tmp_path / "r.db") as store:
-        writer = begin(store, label="L1")
+        writer = begin(store, label="L1", started_utc="2026-01-05T10:00:00Z")
         writer.rows(ROWS[:30])
         writer.event("state", {"state": "dwell"})
         writer.rows(ROWS[30:])
-        assert writer.end("complete", None, {"verdict": "fit", "reason": "because"}) == 1
+        assert writer.end("complete", None, OUTCOME) == 1
+    with Store(tmp_path / "r.db") as store:
         assert store.samples("R1").tolist() == ROWS
         record = store.record("r001")
         assert record["outcomes"][0]["reason"] == "because"
         assert record["events"] == [{"kind": "state", "state": "dwell"}]
-        assert [one.name for one in store.records(verdict="fit", label="L1")] == ["R1"]
-        assert store.records(verdict="unfit") == []
-        assert store.calibrations("0" * 16)[0]["id"] == "abc"
-    with sqlite3.connect(tmp_path / "r.db") as raw:
-        assert raw.execute("SELECT count(*) FROM sample_batch").fetchone()[0] == 0
-    raw.close()
+        assert (record["state"], record["end"], record["sample_count"]) == ("ended", "complete", len(ROWS))
+        assert (record["part"], record["plan"]) == ({"marking": "47n 630V film"}, {"volts_V": 630.0})
+        assert record["started_utc"] == "2026-01-05T10:00:00Z"
+        assert store.calibrations(BOX)[0]["id"] == "abc"
+        assert store.check() == []
 
 
-@pytest.mark.parametrize(
-    "text",
-    [
-        "a/b\\c",
-        "\U0001f600 emoji",
-        "'; DROP TABLE run; --",
-        '"quotes"',
-        "\u05e9\u05dc\u05d5\u05dd",
-        "x" * 10_000,
-        "50%_off",
-    ],
-)
-def test_any_label_and_note_is_kept_and_found(tmp_path: Path, text: str) -> None:
+def test_samples_of_a_closed_run_are_in_one_piece(tmp_path: Path) -> None:
     with Store(tmp_path / "r.db") as store:
-        begin(store, label=text, note=text).end("complete", None, None)
-        begin(store, label="other").end("complete", None, None)
-        assert store.record(1)["label"] == store.record(1)["note"] == text
-        assert [one.id for one in store.records(text=text[:40])] == [1]
-        assert store.count(label=text) == 1
+        whole(store)
+        assert store._connection.execute("SELECT count(*) FROM sample_batch").fetchone()[0] == 0
+        (packed,) = store._connection.execute("SELECT samples FROM trace").fetchone()
+    assert len(packed) < 18 * len(ROWS)  # a byte a number, of four
 
 
-def test_calibrations_are_kept_once_a_version(tmp_path: Path) -> None:
+def test_a_full_second_is_in_the_file_when_the_call_returns(tmp_path: Path) -> None:
+    with Store(tmp_path / "r.db") as store, Store(tmp_path / "r.db") as reader:
+        writer = begin(store)
+        for count, row in enumerate(ROWS, start=1):
+            writer.rows([row])
+            assert len(reader.samples(1)) == count - count % 10
+        writer.event("fault", {"fault": "stop"})
+        assert len(reader.samples(1)) == len(ROWS)
+
+
+def test_rows_of_a_thinned_run_do_not_wait_for_ten_of_them(tmp_path: Path) -> None:
+    """A run that forms for hours keeps a row an interval: each is more than a second of data by itself."""
+    with Store(tmp_path / "r.db") as store, Store(tmp_path / "r.db") as reader:
+        writer = begin(store)
+        for count in range(1, 4):
+            writer.rows([[count, count * 60_000, *ROWS[0][2:]]])
+            assert len(reader.samples(1)) == count
+
+
+def test_a_call_with_many_rows_is_written_a_second_at_a_time(tmp_path: Path) -> None:
     with Store(tmp_path / "r.db") as store:
-        for number in (1, 1, 2):
-            begin(store, calibration={"id": number}).end("complete", None, None)
-        assert [one["id"] for one in store.calibrations("0" * 16)] == [1, 2]
+        begin(store).rows(ROWS)
+        batches = store._connection.execute("SELECT count(*) FROM sample_batch").fetchone()[0]
+    assert batches == len(ROWS) // 10
 
 
-def test_the_same_box_may_not_be_driven_twice_but_two_boxes_may(tmp_path: Path) -> None:
-    with Store(tmp_path / "r.db") as one, Store(tmp_path / "r.db") as two:
-        first = begin(one)
-        with pytest.raises(StoreError, match="driving this box"):
-            begin(two)
-        other = begin(two, box="1" * 16)
-        first.rows(ROWS)
-        other.rows(ROWS)
-        first.end("complete", None, None)
-        begin(two).end("complete", None, None)
-        other.end("complete", None, None)
-        assert one.count() == 3
-
-
-def test_a_run_that_is_being_written_is_not_taken_for_left_behind(tmp_path: Path) -> None:
-    with Store(tmp_path / "r.db") as one, Store(tmp_path / "r.db") as two:
-        writer = begin(one)
-        assert two.unfinished() == []
-        writer.end("complete", None, None)
-
-
-_WRITER = """
-import sys, time
-sys.path[:0] = sys.argv[2].split("|")
-from tests.records.test_store import ROWS, begin
-from dwellbench.records import Store
-with Store(sys.argv[1]) as store:
-    writer = begin(store)
-    n = 0
-    while True:
-        writer.rows([[n + k, *ROWS[0][1:]] for k in range(10)])
-        n += 10
-        print(n, flush=True)
-"""
-
-
-@pytest.mark.parametrize("after", [1, 2, 3, 5, 8, 13, 21, 34])
-def test_a_killed_writer_loses_no_batch_that_was_written(tmp_path: Path, after: int) -> None:
-    database = tmp_path / "r.db"
-    command = [sys.executable, "-c", _WRITER, str(database), "|".join(sys.path)]
-    with subprocess.Popen(
-        command, stdout=subprocess.PIPE, text=True, cwd=Path(__file__).parents[2]
-    ) as process:
-        assert process.stdout is not None
-        said = 0
-        for _ in range(after):
-            said = int(process.stdout.readline())
-        process.kill()
-        process.wait()
-    with Store(database) as store:
-        (left,) = store.unfinished()
-        assert (left.state, store.record(left.id)["why"] is not None) == ("interrupted", True)
-        rows = store.samples(left.id)
-        assert len(rows) >= said
-        assert rows[:, 0].tolist() == list(range(len(rows)))
-
-
-def test_files_that_are_none(tmp_path: Path) -> None:
-    foreign = tmp_path / "foreign.db"
-    with sqlite3.connect(foreign) as raw:
-        raw.execute("CREATE TABLE theirs (x)")
-    raw.close()
-    text = tmp_path / "text.db"
-    text.write_text("not a database at all, " * 200)
-    newer = tmp_path / "newer.db"
-    Store(newer).close()
-    with sqlite3.connect(newer) as raw:
-        raw.execute("PRAGMA user_version = 99")
-    raw.close()
-    for path, words in (
-        (tmp_path, "folder"),
-        (foreign, "another program"),
-        (text, "not a records file"),
-        (newer, "newer dwellbench"),
-    ):
-        with pytest.raises(StoreError, match=words) as caught:
-            Store(path)
-        assert caught.value.exit == 8
-        assert caught.value.remedy
-    assert text.read_text().startswith("not a database")
-
-
-def test_a_file_that_cannot_be_written_says_so(tmp_path: Path) -> None:
-    """SQLite's own error, from a connection opened read-only: as root no file mode would provoke it."""
-    path = tmp_path / "r.db"
-    Store(path).close()
-    raw = sqlite3.connect(f"file:{path}?mode=ro", uri=True)
-    try:
-        with pytest.raises(StoreError, match="cannot be written") as caught, explained(path):
-            raw.execute("CREATE TABLE more (x)")
-        assert "--records" in caught.value.remedy
-    finally:
-        raw.close()
-
-
-def test_a_folder_that_cannot_be_made_says_so(tmp_path: Path) -> None:
-    (tmp_path / "file").touch()
-    with pytest.raises(StoreError, match="cannot be made"):
-        Store(tmp_path / "file" / "r.db")
-
-
-def test_damaged_samples_are_named(tmp_path: Path) -> None:
+@pytest.mark.parametrize("state", ["ended", "interrupted"])
+def test_a_run_is_closed_once(tmp_path: Path, state: str) -> None:
     with Store(tmp_path / "r.db") as store:
         writer = begin(store)
-        writer.rows(ROWS)
-        writer.end("complete", None, {"verdict": "fit"})
-    with sqlite3.connect(tmp_path / "r.db") as raw:
-        data = bytearray(raw.execute("SELECT samples FROM run").fetchone()[0])
-        raw.execute("UPDATE run SET samples = ?", (pack(np.array(ROWS) + 1),))
-    raw.close()
+        if state == "ended":
+            writer.end("complete", None, OUTCOME)
+        else:
+            writer.interrupted("stopped by the user")
+        writer.interrupted("again")
+        record = store.record(1)
+    assert record["state"] == state
+    assert record["why"] == (None if state == "ended" else "stopped by the user")
+
+
+def test_a_run_left_open_when_the_store_is_closed_is_interrupted(tmp_path: Path) -> None:
     with Store(tmp_path / "r.db") as store:
-        with pytest.raises(StoreError, match="R1 are damaged"):
-            store.samples("R1")
-        assert store.record("R1")["outcomes"][0]["verdict"] == "fit"
-    assert data
+        begin(store).rows(ROWS)
+    with Store(tmp_path / "r.db") as store:
+        assert store.unfinished() == []
+        record = store.record(1)
+        assert (record["state"], record["why"]) == (
+            "interrupted",
+            "the records were closed before the run ended",
+        )
+        assert store.samples(1).tolist() == ROWS
 
 
-@pytest.mark.parametrize("name", ["", "17x", "R", "-1", "R1.5"])
-def test_names_that_are_none(tmp_path: Path, name: str) -> None:
-    with Store(tmp_path / "r.db") as store, pytest.raises(UsageError):
-        store.record(name)
+def test_calibrations_are_kept_once_a_version_and_a_box(tmp_path: Path) -> None:
+    with Store(tmp_path / "r.db") as store:
+        for number in (1, 1, 2, 1):
+            whole(store, calibration={"id": number})
+        whole(store, OTHER_BOX, calibration={"id": 1})
+        store.keep_calibration({"box": BOX, "model": "reference"}, {"id": 3})
+        assert [one["id"] for one in store.calibrations(BOX)] == [1, 2, 3]
+        assert [one["id"] for one in store.calibrations(OTHER_BOX)] == [1]
+        assert [store.record(number)["calibration"]["id"] for number in (1, 2, 3, 4)] == [1, 1, 2, 1]
+        whole(store, calibration=None)
+        assert store.record("R6")["calibration"] is None
 
 
-@given(st.lists(st.lists(st.integers(-(2**30) + 1, 2**30 - 1), min_size=18, max_size=18), max_size=30))
-def test_rows_are_packed_without_loss(rows: list[list[int]]) -> None:
-    assert unpack(pack(rows)).tolist() == rows
-    assert hash_of(unpack(pack(rows))) == hash_of(rows)
+def test_later_outcomes_and_notes_stand_beside_the_first(tmp_path: Path) -> None:
+    with Store(tmp_path / "r.db") as store:
+        whole(store, note="first")
+        store.add_outcome("R1", {"verdict": "unfit", "reason": "a stricter grade", "findings": []})
+        store.add_note("R1", "second")
+        record = store.record("R1")
+        assert [one["verdict"] for one in record["outcomes"]] == ["fit", "unfit"]
+        assert [one["text"] for one in record["notes"]] == ["first", "second"]
+        assert record["note"] == "first"
+        assert store.records()[0].verdict == record["verdict"] == "unfit"
+        assert store.check() == []
+
+
+def test_nothing_is_added_to_a_run_that_is_being_written_or_is_not_there(tmp_path: Path) -> None:
+    with Store(tmp_path / "r.db") as store:
+        writer = begin(store)
+        with pytest.raises(StoreError, match="still being written"):
+            store.add_note(writer.id, "too early")
+        with pytest.raises(UsageError, match="no record R7"):
+            store.add_outcome("R7", OUTCOME)
+        writer.rows(ROWS[:20])
+        writer.end("complete", None, None)
+        assert store.check() == []
+
+
+def test_what_is_no_number_is_kept_as_null(tmp_path: Path) -> None:
+    """JSON has no word for it, and other readers of the file would stumble over one that only Python knows."""
+    with Store(tmp_path / "r.db") as store:
+        writer = begin(store)
+        writer.end("complete", None, {**OUTCOME, "leakage_A": {"value": math.nan, "bounds": [0.5, math.inf]}})
+        (outcome,) = store.record(1)["outcomes"]
+        assert outcome["leakage_A"] == {"value": None, "bounds": [0.5, None]}
+        document = store._connection.execute("SELECT document FROM outcome").fetchone()[0]
+    assert "NaN" not in document
+
+
+@pytest.mark.parametrize("text", ["\udcff", "a\0b"])
+@pytest.mark.parametrize("what", ["label", "note"])
+def test_what_is_no_text_is_refused_before_anything_is_written(tmp_path: Path, what: str, text: str) -> None:
+    """A command line of bytes that are no UTF-8 comes to Python with such code points in it."""
+    with Store(tmp_path / "r.db") as store:
+        with pytest.raises(UsageError, match=what):
+            begin(store, **{what: text})
+        assert store.records(text=text) == []
+        assert store.count() == 0
+        whole(store)
+
+
+def test_beginnings_and_ends_wait_for_the_disk_and_seconds_do_not(tmp_path: Path) -> None:
+    """What SQLite was told: FULL before the transaction of a beginning and an end, which a power cut must not undo."""
+    told: list[str] = []
+    with Store(tmp_path / "r.db") as store:
+        store._connection.set_trace_callback(told.append)
+        writer = begin(store)
+        middle = len(told)
+        writer.rows(rows(40))
+        last = len(told)
+        writer.end("complete", None, OUTCOME)
+        store._connection.set_trace_callback(None)
+    for part in (told[:middle], told[last:]):
+        full, commit = part.index("PRAGMA synchronous = FULL"), part.index("COMMIT")
+        assert full < commit < part.index("PRAGMA synchronous = NORMAL")
+    assert not any("synchronous" in text for text in told[middle:last])
+    assert told[middle:last].count("COMMIT") == 4

@@ -6,6 +6,7 @@ holds its box's lock was interrupted.
 
 from __future__ import annotations
 
+import errno
 import hashlib
 import os
 from pathlib import Path
@@ -19,12 +20,17 @@ except ImportError:  # Windows
     fcntl = None  # type: ignore[assignment]
     import msvcrt
 
+_HELD = (errno.EACCES, errno.EAGAIN, errno.EDEADLK, errno.EWOULDBLOCK)
+"""What systems answer when another process has the lock; anything else means that there are no locks here."""
+
 
 class BoxLock:
     """Held while the object lives and is not released."""
 
     def __init__(self, store: Path, box: str) -> None:
+        """`store` by whichever name: links to one file lead to one lock."""
         name = hashlib.sha256(box.encode()).hexdigest()[:16]
+        store = store.resolve()
         self._path = store.with_name(f"{store.name}.box-{name}.lock")
         self._file: IO[bytes] | None = None
 
@@ -34,21 +40,24 @@ class BoxLock:
             raise StoreError(
                 "Another program is driving this box with these records.",
                 remedy="Wait for its end, or stop it; one program drives a box at a time.",
+                cause="box_taken",
             )
 
     def try_take(self) -> bool:
-        """Take it if it is free; say whether it is held now."""
+        """Take it if it is free; say whether it is held now. Raises StoreError where it cannot be told."""
         if self._file is not None:
             return True
         try:
             file = open(self._path, "a+b")  # noqa: SIM115  (kept open: closing it lets the lock go)
+            if not _locked(file):
+                file.close()
+                return False
         except OSError as error:
             raise StoreError(
-                f"{self._path} cannot be made: {error.strerror}.", remedy="Name another file with --records."
+                f"{self._path} cannot be made or locked: {error.strerror}.",
+                remedy="Keep the records on a disk of this machine, in a folder that you may write.",
+                cause="cannot_lock",
             ) from None
-        if not _lock(file):
-            file.close()
-            return False
         self._file = file
         return True
 
@@ -59,15 +68,19 @@ class BoxLock:
             self._file = None
 
 
-def _lock(file: IO[bytes]) -> bool:
+def _locked(file: IO[bytes]) -> bool:
+    """Try to lock it; False if another has it. OSError where locks do not work."""
     try:
         if fcntl is not None:
             fcntl.flock(file, fcntl.LOCK_EX | fcntl.LOCK_NB)
         else:
             file.seek(0)
             msvcrt.locking(file.fileno(), msvcrt.LK_NBLCK, 1)  # type: ignore[attr-defined, unused-ignore]
-    except OSError:
-        return False
+    except OSError as error:
+        if error.errno in _HELD:
+            return False
+        file.close()
+        raise
     return True
 
 

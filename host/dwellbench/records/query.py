@@ -1,18 +1,17 @@
-"""Finding and showing records. A record's number is shown as R17; both R17 and 17 name it."""
+"""Finding records: a list, narrowed and paged. A record's number is shown as R17; both R17 and 17 name it."""
 
 from __future__ import annotations
 
-import json
 import re
 import sqlite3
 from dataclasses import asdict, dataclass
 from typing import Any
 
-import numpy as np
-from numpy.typing import NDArray
+from dwellbench.errors import UsageError
+from dwellbench.records.folding import folded
 
-from dwellbench.errors import StoreError, UsageError
-from dwellbench.records.packing import hash_of, unpack
+_MOST = 2**63 - 1
+"""What SQLite counts to."""
 
 
 @dataclass(frozen=True)
@@ -41,9 +40,27 @@ class Summary:
         return {"record": self.name, **asdict(self)}
 
 
+@dataclass(frozen=True)
+class Where:
+    """Which records; None is any.
+
+    `text` is looked for in label, marking and notes, whatever the case; `since` is inclusive, `until` exclusive, both in UTC.
+    """
+
+    text: str | None = None
+    verdict: str | None = None
+    label: str | None = None
+    marking: str | None = None
+    since: str | None = None
+    until: str | None = None
+    box: str | None = None
+    simulated: bool | None = None
+    state: str | None = None
+
+
 def number_of(name: str | int) -> int:
     """Return the number of a record's name. UsageError if it is none."""
-    match = re.fullmatch(r"[Rr]?0*([0-9]{1,12})", str(name).strip())
+    match = re.fullmatch(r"[Rr]?0*([0-9]{1,12})", str(name).strip(), re.ASCII)
     if not match:
         raise UsageError(
             f"{name!r} is no record's name.",
@@ -52,124 +69,59 @@ def number_of(name: str | int) -> int:
     return int(match[1])
 
 
-_SUMMARY = (
-    "SELECT run.id, label, marking, role, verdict, state, end, fault, started_utc, box.unique_id AS box, simulated"
-    " FROM run JOIN box ON box.id = run.box"
-)
+_COLUMNS = "SELECT run.id, label, marking, role, verdict, state, end, fault, started_utc, box.unique_id AS box, simulated"
+_FROM = " FROM run JOIN box ON box.id = run.box"
 
 
-def find(connection: sqlite3.Connection, where: dict[str, Any], limit: int, offset: int) -> list[Summary]:
-    """Return summaries, newest first. `where` has text, verdict, label, since, until, box, simulated; None is any."""
-    clauses, values = _conditions(where)
-    sql = _SUMMARY + (" WHERE " + " AND ".join(clauses) if clauses else "")
-    rows = connection.execute(
-        sql + " ORDER BY run.id DESC LIMIT ? OFFSET ?", (*values, limit, offset)
-    ).fetchall()
-    return [Summary(**{**dict(row), "simulated": bool(row["simulated"])}) for row in rows]
+def find(connection: sqlite3.Connection, where: Where, limit: int, offset: int) -> list[Summary]:
+    """Return summaries, newest first."""
+    condition, values = _condition(where)
+    page = (min(limit, _MOST), min(offset, _MOST))
+    sql = f"{_COLUMNS}{_FROM}{condition} ORDER BY run.id DESC LIMIT ? OFFSET ?"
+    return [_summary(row) for row in connection.execute(sql, (*values, *page))]
 
 
-def count(connection: sqlite3.Connection, where: dict[str, Any]) -> int:
+def summary(connection: sqlite3.Connection, run: int) -> Summary:
+    """Return the line of one record, which must be there."""
+    return _summary(connection.execute(f"{_COLUMNS}{_FROM} WHERE run.id = ?", (run,)).fetchone())
+
+
+def count(connection: sqlite3.Connection, where: Where) -> int:
     """How many records match."""
-    clauses, values = _conditions(where)
-    sql = "SELECT count(*) FROM run JOIN box ON box.id = run.box" + (
-        " WHERE " + " AND ".join(clauses) if clauses else ""
-    )
-    return int(connection.execute(sql, values).fetchone()[0])
+    condition, values = _condition(where)
+    if not condition:
+        return int(connection.execute("SELECT count(*) FROM run").fetchone()[0])
+    return int(connection.execute(f"SELECT count(*){_FROM}{condition}", values).fetchone()[0])
 
 
+def _summary(row: sqlite3.Row) -> Summary:
+    return Summary(**{**dict(row), "simulated": bool(row["simulated"])})
+
+
+# The narrow index over `search` is read, not the rows with their plans and parts.
+_TEXT = "(run.id IN (SELECT id FROM run WHERE instr(search, ?)) OR run.id IN (SELECT run FROM note WHERE instr(search, ?)))"
 _WHERE = {
     "verdict": "verdict = ?",
     "label": "label = ?",
+    "marking": "marking = ?",
     "since": "started_utc >= ?",
     "until": "started_utc < ?",
     "box": "box.unique_id = ?",
+    "simulated": "simulated = ?",
+    "state": "state = ?",
 }
 
 
-def _conditions(where: dict[str, Any]) -> tuple[list[str], list[Any]]:
-    clauses, values = [], []
-    for name, clause in _WHERE.items():
-        if where.get(name) is not None:
-            clauses.append(clause)
-            values.append(where[name])
-    if where.get("simulated") is not None:
-        clauses.append("simulated = ?")
-        values.append(int(where["simulated"]))
-    if where.get("text"):
-        escaped = re.sub(r"([%_\\])", r"\\\1", where["text"])
-        clauses.append("(label LIKE ? ESCAPE '\\' OR marking LIKE ? ESCAPE '\\' OR note LIKE ? ESCAPE '\\')")
-        values.extend([f"%{escaped}%"] * 3)
-    return clauses, values
+def _condition(where: Where) -> tuple[str, list[Any]]:
+    given = {key: value for key, value in asdict(where).items() if value is not None and key != "text"}
+    clauses, values = [_WHERE[key] for key in given], list(given.values())
+    if where.text:
+        clauses.append(_TEXT)
+        values += [folded(where.text)] * 2
+    values = [_plain(value) for value in values]
+    return (" WHERE " + " AND ".join(clauses) if clauses else ""), values
 
 
-_PLAIN = [
-    "run_key",
-    "firmware",
-    "build",
-    "label",
-    "note",
-    "marking",
-    "role",
-    "grade",
-    "started_utc",
-    "ended_utc",
-    "state",
-    "end",
-    "fault",
-    "why",
-    "verdict",
-    "sample_count",
-]
-
-
-def show(connection: sqlite3.Connection, name: str | int) -> dict[str, Any]:
-    """Return one whole record but its samples. UsageError if there is none of this name."""
-    number = number_of(name)
-    row = connection.execute(
-        "SELECT run.*, box.unique_id, box.model, calibration.document AS calibration_document FROM run JOIN box ON box.id = run.box"
-        " LEFT JOIN calibration ON calibration.id = run.calibration WHERE run.id = ?",
-        (number,),
-    ).fetchone()
-    if row is None:
-        raise UsageError(f"There is no record R{number}.", remedy="List them with: dwellbench records list.")
-    record: dict[str, Any] = {"record": f"R{number}", **{key: row[key] for key in _PLAIN}}
-    record["simulated"] = bool(row["simulated"])
-    record["box"], record["model"] = row["unique_id"], row["model"]
-    record["part"], record["plan"] = json.loads(row["part"]), json.loads(row["plan"])
-    document = row["calibration_document"]
-    record["calibration"] = None if document is None else json.loads(document)
-    record["events"] = [
-        {"kind": event["kind"], **json.loads(event["document"])}
-        for event in connection.execute(
-            "SELECT kind, document FROM event WHERE run = ? ORDER BY number", (number,)
-        )
-    ]
-    record["outcomes"] = [
-        {"made_utc": outcome["made_utc"], **json.loads(outcome["document"])}
-        for outcome in connection.execute(
-            "SELECT made_utc, document FROM outcome WHERE run = ? ORDER BY id", (number,)
-        )
-    ]
-    return record
-
-
-def samples(connection: sqlite3.Connection, name: str | int) -> NDArray[np.int64]:
-    """Return a record's sample rows, shape (n, 18). StoreError if they are not what was written."""
-    number = number_of(name)
-    row = connection.execute("SELECT samples, samples_hash FROM run WHERE id = ?", (number,)).fetchone()
-    if row is None:
-        raise UsageError(f"There is no record R{number}.", remedy="List them with: dwellbench records list.")
-    if row["samples"] is None:
-        query = "SELECT samples FROM sample_batch WHERE run = ? ORDER BY number"
-        pieces = [unpack(batch["samples"]) for batch in connection.execute(query, (number,))]
-        return np.concatenate(pieces) if pieces else np.zeros((0, 18), dtype=np.int64)
-    try:
-        table = unpack(row["samples"])
-    except ValueError:
-        table = np.zeros((0, 18), dtype=np.int64)
-    if hash_of(table) != row["samples_hash"]:
-        raise StoreError(
-            f"The samples of R{number} are damaged.",
-            remedy="Restore them from a backup; the outcome is kept apart.",
-        )
-    return table
+def _plain(value: Any) -> Any:
+    """Text that no file can hold is found nowhere; the replacement sign keeps it from being an error."""
+    return value.encode(errors="replace").decode() if isinstance(value, str) else value

@@ -1,15 +1,30 @@
 """Tables, and how an older file becomes a newer one.
 
-A migration is SQL that runs in one transaction together with the row that records it and the new `user_version`. Files of a newer
-version are refused; before an older one is changed, a copy is made beside it.
+A migration is SQL, and where SQL is not enough a function, that run in one transaction together with the row that records it and
+the new `user_version`. Files of a newer version are refused; before an older one is changed, a copy is made beside it. A migration
+that was released is never changed: a file that went through it would differ from one that is made new.
 """
 
 from __future__ import annotations
 
+import sqlite3
+from collections.abc import Callable
+
+from dwellbench.records.digest import fill_digests
+from dwellbench.records.folding import fill_search
+
 # "DWLB" in ASCII: whose file this is (SQLite's application_id).
 APPLICATION_ID = 0x44574C42
 
-MIGRATIONS: tuple[tuple[str, str], ...] = (
+Fill = Callable[[sqlite3.Connection], None]
+
+
+def _fill_2(connection: sqlite3.Connection) -> None:
+    fill_search(connection)
+    fill_digests(connection)
+
+
+MIGRATIONS: tuple[tuple[str, str, Fill | None], ...] = (
     (
         "runs as they are written, their samples, events and outcomes; boxes and calibrations",
         """
@@ -83,6 +98,39 @@ MIGRATIONS: tuple[tuple[str, str], ...] = (
         );
         CREATE INDEX outcome_run ON outcome(run);
         """,
+        None,
+    ),
+    (
+        "samples beside the run instead of in it, so that lists stay quick; several notes; digests that show damage;"
+        " a search that knows no difference of case or of micro signs",
+        """
+        CREATE TABLE trace (
+            run INTEGER PRIMARY KEY REFERENCES run(id),
+            samples BLOB NOT NULL,
+            hash TEXT NOT NULL
+        );
+        INSERT INTO trace SELECT id, samples, samples_hash FROM run WHERE samples IS NOT NULL;
+        ALTER TABLE run DROP COLUMN samples;
+        ALTER TABLE run DROP COLUMN samples_hash;
+
+        CREATE TABLE note (
+            id INTEGER PRIMARY KEY,
+            run INTEGER NOT NULL REFERENCES run(id),
+            made_utc TEXT NOT NULL,
+            document TEXT NOT NULL,
+            search TEXT NOT NULL DEFAULT '',
+            digest TEXT
+        );
+        CREATE INDEX note_run ON note(run);
+        INSERT INTO note (run, made_utc, document) SELECT id, started_utc, note FROM run WHERE note IS NOT NULL ORDER BY id;
+        ALTER TABLE run DROP COLUMN note;
+
+        ALTER TABLE run ADD COLUMN search TEXT NOT NULL DEFAULT '';
+        ALTER TABLE run ADD COLUMN digest TEXT;
+        ALTER TABLE outcome ADD COLUMN digest TEXT;
+        CREATE INDEX run_search ON run(search);
+        """,
+        _fill_2,
     ),
 )
 

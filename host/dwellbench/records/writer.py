@@ -1,120 +1,116 @@
 """One run being written: rows as they arrive, events, and the end.
 
 Rows are kept back for at most a second of samples and then written in one transaction, so that a killed program loses no more
-than that. Ending a run packs its batches into one piece, with the outcome, in a single transaction: there is no moment at which
-samples are neither here nor there.
+than that. While another program keeps the file to itself, what comes is held here for a while instead of waiting: a host that
+waits says nothing to the box, and two seconds of silence would end the run.
 """
 
 from __future__ import annotations
 
-import json
 import sqlite3
 from collections.abc import Iterable, Sequence
 from pathlib import Path
 from typing import Any
 
-import numpy as np
-
-from dwellbench.records.database import explained, now_utc
+from dwellbench.errors import StoreError
+from dwellbench.records.closing import Closing, close_run
+from dwellbench.records.database import now_utc, waiting
+from dwellbench.records.documents import dumped
+from dwellbench.records.failures import explained
 from dwellbench.records.owner import BoxLock
-from dwellbench.records.packing import hash_of, pack, unpack
+from dwellbench.records.packing import pack
+from dwellbench.records.transaction import transaction
 
-BATCH = 10
-"""Rows a transaction: one second at ten samples a second."""
+BATCH_MS = 1000
+BATCH_ROWS = 10
+"""A transaction's worth: one second, or ten rows of 100 ms each."""
+
+SHORT_WAIT_S = 0.1
+MOST_REFUSALS = 40
+"""In mid-run: how long to wait for another writer, and how often in a row before it is an error (some 40 s of samples, 0.5 MB)."""
+
+_BATCH = "INSERT INTO sample_batch VALUES (?, ?, ?)"
+_EVENT = "INSERT INTO event VALUES (?, ?, ?, ?)"
 
 
 class RunWriter:
-    """Made by `Store.begin_run`. `id` is the record's number."""
+    """Made by `Store.begin_run`. `id` is the record's number. Every method may raise StoreError."""
 
-    def __init__(self, connection: sqlite3.Connection, path: Path, run: int, lock: BoxLock) -> None:
+    def __init__(
+        self, connection: sqlite3.Connection, path: Path, run: int, lock: BoxLock, wait_s: float
+    ) -> None:
         self.id = run
+        self.open = True
         self._connection = connection
         self._path = path
         self._lock = lock
-        self._held: list[list[int]] = []
-        self._batches = 0
-        self._events = 0
-        self.open = True
+        self._wait_s = wait_s
+        self._rows: list[list[int]] = []
+        self._pending: list[tuple[str, tuple[Any, ...]]] = []
+        self._batches = self._events = self._refusals = 0
+        self._taken_ms = 0  # time of the last row that was made part of a batch
 
     def rows(self, rows: Iterable[Sequence[int]]) -> None:
-        """Take sample rows; those of a whole second are in the file when this returns."""
-        self._held.extend([int(value) for value in row] for row in rows)
-        if len(self._held) >= BATCH:
-            self.flush()
-
-    def flush(self) -> None:
-        """Write what is held back."""
-        if not self._held:
-            return
-        data = pack(self._held)
-        with explained(self._path):
-            self._connection.execute(
-                "INSERT INTO sample_batch VALUES (?, ?, ?)", (self.id, self._batches, data)
-            )
-        self._batches += 1
-        self._held = []
+        """Take sample rows of 18 whole numbers; those of a whole second are in the file when this returns."""
+        for row in rows:
+            self._rows.append([int(value) for value in row])
+            if len(self._rows) >= BATCH_ROWS or abs(self._rows[-1][1] - self._taken_ms) >= BATCH_MS:
+                self._take_rows()
+                self._write_soon()
 
     def event(self, kind: str, document: dict[str, Any]) -> None:
         """Write an event (state, fault, done, log) at once, after the rows before it."""
-        self.flush()
-        with explained(self._path):
-            self._connection.execute(
-                "INSERT INTO event VALUES (?, ?, ?, ?)", (self.id, self._events, kind, json.dumps(document))
-            )
+        self._take_rows()
+        self._pending.append((_EVENT, (self.id, self._events, kind, dumped(document))))
         self._events += 1
+        self._write_soon()
+
+    def flush(self) -> None:
+        """Write what is held back, waiting for another program as long as for anything."""
+        self._take_rows()
+        with explained(self._path):
+            self._write()
 
     def end(self, end: str | None, fault: str | None, outcome: dict[str, Any] | None) -> int:
         """End the run with its outcome; return the record's number."""
-        self._close("ended", end, fault, None, outcome)
-        return self.id
+        return self._close(Closing("ended", end, fault, None, outcome))
 
     def interrupted(self, why: str, outcome: dict[str, Any] | None = None) -> int:
-        """End the run as interrupted, and say why."""
-        self._close("interrupted", None, None, why, outcome)
-        return self.id
+        """End the run as interrupted, and say why; return the record's number."""
+        return self._close(Closing("interrupted", None, None, why, outcome))
 
-    def _close(
-        self, state: str, end: str | None, fault: str | None, why: str | None, outcome: dict[str, Any] | None
-    ) -> None:
-        if not self.open:
+    def _take_rows(self) -> None:
+        if self._rows:
+            self._pending.append((_BATCH, (self.id, self._batches, pack(self._rows))))
+            self._batches += 1
+            self._taken_ms = self._rows[-1][1]
+            self._rows = []
+
+    def _write_soon(self) -> None:
+        """Write, or hold on to it while another program has the file."""
+        try:
+            with explained(self._path), waiting(self._connection, SHORT_WAIT_S, self._wait_s):
+                self._write()
+        except StoreError as error:
+            self._refusals += 1
+            if error.details.get("cause") != "locked" or self._refusals >= MOST_REFUSALS:
+                raise
+
+    def _write(self) -> None:
+        if not self._pending:
             return
-        self.flush()
-        with explained(self._path):
-            close_run(self._connection, self.id, state, end, fault, why, outcome)
-        self.open = False
-        self._lock.release()
+        with transaction(self._connection):
+            for sql, values in self._pending:
+                self._connection.execute(sql, values)
+        self._pending = []
+        self._refusals = 0
 
-
-def close_run(
-    connection: sqlite3.Connection,
-    run: int,
-    state: str,
-    end: str | None,
-    fault: str | None,
-    why: str | None,
-    outcome: dict[str, Any] | None,
-) -> None:
-    """Pack a run's samples and set its end, in one transaction."""
-    connection.execute("BEGIN IMMEDIATE")
-    try:
-        batches = connection.execute(
-            "SELECT samples FROM sample_batch WHERE run = ? ORDER BY number", (run,)
-        ).fetchall()
-        pieces = [unpack(row["samples"]) for row in batches]
-        table = np.concatenate(pieces) if pieces else np.zeros((0, 18), dtype=np.int64)
-        verdict = None if outcome is None else outcome.get("verdict")
-        connection.execute(
-            "UPDATE run SET state = ?, end = ?, fault = ?, why = ?, verdict = ?, ended_utc = ?,"
-            " samples = ?, samples_hash = ?, sample_count = ? WHERE id = ?",
-            (state, end, fault, why, verdict, now_utc(), pack(table), hash_of(table), len(table), run),
-        )
-        connection.execute("DELETE FROM sample_batch WHERE run = ?", (run,))
-        if outcome is not None:
-            connection.execute(
-                "INSERT INTO outcome (run, made_utc, document) VALUES (?, ?, ?)",
-                (run, now_utc(), json.dumps(outcome)),
-            )
-        connection.execute("COMMIT")
-    except BaseException:
-        connection.execute("ROLLBACK")
-        raise
+    def _close(self, closing: Closing) -> int:
+        """A second call does nothing: who stops a run and who closes the store may both want its end."""
+        if self.open:
+            self.flush()
+            with explained(self._path):
+                close_run(self._connection, self.id, closing, now_utc())
+            self.open = False
+            self._lock.release()
+        return self.id
