@@ -159,6 +159,48 @@ def test_a_series_resistance_that_cannot_be_is_refused(run: Run, value: str) -> 
         assert "no series resistance" in err
 
 
+@pytest.mark.parametrize(
+    ("text", "words"),
+    [
+        ('[thresholds]\naccept = "0.9"\n', "accept is not a number"),
+        ("[thresholds]\nreject = true\n", "reject is not a number"),
+        ("[places]\nmine = 3\n", "mine is not a place in quotes"),
+    ],
+)
+def test_a_configuration_of_the_wrong_kind_is_told_where_it_is_wrong(
+    run: Run, tmp_path: Path, text: str, words: str
+) -> None:
+    (tmp_path / "wrong.toml").write_text(text)
+    status, _, err = run("--config", str(tmp_path / "wrong.toml"), "limits")
+    assert status == 2
+    assert words in err
+    assert "wrong.toml" in err
+
+
+@pytest.mark.parametrize(
+    ("arguments", "words"),
+    [
+        (("--box", "emu://empty", "zero", "--volts", "0", "--yes"), "0 V is no test voltage"),
+        (("--box", "emu://film", "test", "47n 630V film", "--volts", "0", "--yes"), "0 V is no test voltage"),
+        (("limits", "--part", ""), "marking is empty"),
+        (("--box", "emu://film", "box", "--shorted"), "--acknowledge"),
+    ],
+)
+def test_nought_and_nothing_are_not_taken_for_left_out(
+    run: Run, arguments: tuple[str, ...], words: str
+) -> None:
+    status, _, err = run(*arguments)
+    assert status == 2
+    assert words in err
+
+
+def test_an_error_that_nobody_reads_keeps_its_status(tmp_path: Path) -> None:
+    with begun(tmp_path, "records", "show", "17") as process:
+        assert process.stderr is not None
+        process.stderr.close()
+        assert process.wait(timeout=20) == 2
+
+
 def test_a_marking_without_quotes_is_told_to_have_them(run: Run) -> None:
     status, _, err = run("test", "47n", "630V", "film")
     assert status == 2

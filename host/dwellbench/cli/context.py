@@ -158,10 +158,26 @@ def _take_file(options: Options, path: Path, file: dict[str, Any]) -> None:
     options.box = options.box or file.get("box")
     if options.records is None and "records" in file:
         options.records = Path(file["records"]).expanduser()
-    options.places = {str(name): str(role) for name, role in file.get("places", {}).items()}
-    wrong = set(file.get("thresholds", {})) - {"accept", "reject"}
-    if wrong:
-        raise UsageError(
-            f"{path}: [thresholds] has no {sorted(wrong)[0]!r}.", remedy="It has accept and reject."
-        )
-    options.thresholds = Thresholds(**file.get("thresholds", {}))
+    options.places = _places(path, file.get("places", {}))
+    options.thresholds = _thresholds(path, file.get("thresholds", {}))
+
+
+def _places(path: Path, table: dict[str, Any]) -> dict[str, str]:
+    for name, role in table.items():
+        if not isinstance(role, str):
+            raise UsageError(
+                f"{path}: [places] {name} is not a place in quotes.",
+                remedy=f'Write it as in: {name} = "coupling@310V/470k".',
+            )
+    return table
+
+
+def _thresholds(path: Path, table: dict[str, Any]) -> Thresholds:
+    for name, value in table.items():
+        if name not in ("accept", "reject"):
+            raise UsageError(f"{path}: [thresholds] has no {name!r}.", remedy="It has accept and reject.")
+        if isinstance(value, bool) or not isinstance(value, (int, float)):
+            raise UsageError(
+                f"{path}: [thresholds] {name} is not a number.", remedy="Write it as in: accept = 0.95."
+            )
+    return Thresholds(**table)

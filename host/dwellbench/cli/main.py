@@ -6,6 +6,7 @@ import io
 import os
 import sys
 from collections.abc import Sequence
+from contextlib import suppress
 from importlib import import_module
 from typing import Any
 
@@ -157,15 +158,17 @@ def _bug(error: Exception) -> BugError:
 
 
 def _failed(options: Options, error: DwellbenchError) -> int:
-    if options.json:
-        document = error.as_json()
-        options.document(
-            {"event": "error", **document} if options.streams else document, line=options.streams
-        )
-    else:
-        click.echo(f"dwellbench: {error.message}", err=True)
-        for reading in error.details.get("readings", []):
-            click.echo(f"    {reading}", err=True)
-        if error.remedy:
-            click.echo(error.remedy, err=True)
+    with suppress(BrokenPipeError):  # nobody reads any more; the status stands
+        _tell(options, error)
     return error.exit
+
+
+def _tell(options: Options, error: DwellbenchError) -> None:
+    if options.json:
+        event = {"event": "error"} if options.streams else {}
+        options.document({**event, **error.as_json()}, line=options.streams)
+        return
+    readings = [f"    {reading}" for reading in error.details.get("readings", [])]
+    for line in (f"dwellbench: {error.message}", *readings, error.remedy):
+        if line:
+            click.echo(line, err=True)

@@ -78,8 +78,9 @@ def lines(outcome: Outcome) -> list[str]:
     told += [f"  found: {finding.id.replace('_', ' ')}. {finding.evidence}" for finding in outcome.findings]
     if outcome.limits:
         ruling = outcome.limits[0]
-        limit = f"{ruling.quantity.replace('_', ' ')} {si(ruling.value, ruling.unit)}"
-        told.append(f"  ruling limit: {limit} ({ruling.source}; {ruling.status}).")
+        what = ruling.quantity.rpartition("_")[0].replace("_", " ")
+        doubt = "" if ruling.status in ruling.source else f"; {ruling.status}"
+        told.append(f"  ruling limit: {what} {si(ruling.value, ruling.unit)} ({ruling.source}{doubt}).")
     if outcome.suits and outcome.role is None:
         told.append("  suits: " + ", ".join(suit.role.replace("_", " ") for suit in outcome.suits) + ".")
     if outcome.not_tested:

@@ -10,6 +10,7 @@ from dwellbench.bench import Bench
 from dwellbench.cli.context import Options, global_options
 from dwellbench.cli.main import ready
 from dwellbench.cli.reach import connect
+from dwellbench.errors import UsageError
 from dwellbench.wire.codes import row
 from dwellbench.wire.link import ports
 
@@ -42,6 +43,8 @@ def command(ctx: click.Context, /, **given: Any) -> int:
     options = ready(ctx, given)
     if given["list_"]:
         return _list(options)
+    if given["shorted"] and not given["acknowledge"]:
+        raise UsageError("--shorted says how a lockout may be left.", remedy="Give it with --acknowledge.")
     with connect(options) as box:
         if given["acknowledge"]:
             box.wait_for(lambda now: now["safe"] or now["state"] not in ("waking", "lockout"), 60.0)
@@ -61,7 +64,8 @@ def _list(options: Options) -> int:
         options.document({"ports": found})
         return 0
     for port in found:
-        options.say(f"{port['url']}  {port['what']}")
+        what = "nothing is known of it" if port["what"] in ("", "n/a") else port["what"]
+        options.say(f"{port['url']}  {what}")
     if not found:
         options.say("No serial port is here. Without a box, try --box emu://film.")
     return 0
@@ -86,7 +90,7 @@ def described(box: Bench, status: dict[str, Any]) -> list[str]:
 
 
 def _touch(status: dict[str, Any]) -> str:
-    volts = f"{status['part_mv'] / 1000:.0f} V on the part"
+    volts = f"{round(status['part_mv'] / 1000)} V on the part"
     if status["safe"]:
         return f"{volts}; discharge is proven."
     if status["hv"] or status["part_mv"] >= 30000:

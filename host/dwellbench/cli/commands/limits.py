@@ -50,7 +50,7 @@ def command(ctx: click.Context, /, **given: Any) -> int:
     options = ready(ctx, given)
     if given["roles"]:
         return _roles(options)
-    part = Part.parse(given["marking"]) if given["marking"] else None
+    part = None if given["marking"] is None else Part.parse(given["marking"])
     rows = [described(limit, part) for limit in _chosen(part)]
     if options.json:
         options.document({"limits": rows})

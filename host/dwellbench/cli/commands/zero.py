@@ -6,6 +6,7 @@ from typing import Any
 
 import click
 
+from dwellbench.bench import Bench
 from dwellbench.cli.context import global_options
 from dwellbench.cli.main import ready
 from dwellbench.cli.prompts import ask_ready
@@ -58,7 +59,7 @@ def command(ctx: click.Context, /, **given: Any) -> int:
     options = ready(ctx, given)
     _check(given)
     with open_store(options) as store, connect(options) as box:
-        plan = Plan.empty(box.ratings, given["volts"] or box.ratings.volts_V, given["dwell"])
+        plan = Plan.empty(box.ratings, _volts(given, box), given["dwell"])
         for line in plan.explain():
             options.say(line)
         ask_ready(options, "Leave the fixture empty and close the lid.", yes=given["yes"])
@@ -79,6 +80,11 @@ def command(ctx: click.Context, /, **given: Any) -> int:
         f"The empty fixture insulates {found}, at {volts(zero.volts_V)}; kept in the box for {zero.valid_h:g} h."
     )
     return 0
+
+
+def _volts(given: dict[str, Any], box: Bench) -> float:
+    volts_V: float | None = given["volts"]
+    return box.ratings.volts_V if volts_V is None else volts_V
 
 
 def _check(given: dict[str, Any]) -> None:
