@@ -124,7 +124,7 @@ def run(arguments: list[str]) -> int:
     except click.ClickException as error:
         return _failed(options, _usage(error))
     except (click.Abort, KeyboardInterrupt):
-        return _failed(options, StoppedError("Stopped by you; nothing was energised by this command."))
+        return _failed(options, StoppedError("Stopped by you; no run was under way."))
     except (BrokenPipeError, SystemExit):  # click leaves by the second when a pipe breaks, and then only
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return StoppedError.exit  # whoever read has gone: nothing more to say, and no verdict was told
