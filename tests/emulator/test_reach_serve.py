@@ -24,7 +24,7 @@ from dwellbench.emulator.serve import Outlet, serve
 from dwellbench.errors import NoBoxError, UsageError
 from dwellbench.wire.core import seal, unseal
 
-SPEED = 20.0  # the silence that ends a run is then a tenth of a wall second, which a busy computer can keep
+SPEED = 10.0  # the silence that ends a run is then a fifth of a wall second, which a busy computer can keep
 STATUS = seal({"jsonrpc": "2.0", "id": 1, "method": "status"})
 Start = Callable[..., EmulatedBox]
 
@@ -48,12 +48,18 @@ def start() -> Iterator[Start]:
 
 
 def in_dwell(box: Bench, dwell: float) -> None:
-    """Start a run on a 1 uF part and follow it into the dwell."""
-    box.settle()
-    for notice in box.start(plan(box, "1uF 630V film", dwell=dwell)):
-        if notice.method == "state" and notice.params["state"] == "dwell":
-            return
-    raise AssertionError("it did not come to the dwell")
+    """Start a run on a 1 uF part and follow it into the dwell; again if a busy computer let the silence limit pass."""
+    ends = []
+    for _ in range(3):
+        box.settle()
+        run = box.start(plan(box, "1uF 630V film", dwell=dwell))
+        for notice in run:
+            if notice.method == "state" and notice.params["state"] == "dwell":
+                return
+        ends.append((run.end, run.fault))
+        box.wait_for(lambda now: now["lid"] == "open", 60.0)
+        box.wait_for(lambda now: now["lid"] == "closed", 60.0)
+    raise AssertionError(f"it did not come to the dwell: {ends}")
 
 
 def wait_until(done: Callable[[], bool], seconds: float = 20.0) -> None:
