@@ -153,6 +153,22 @@ def test_early_ends(
         assert outcome.to_decide
 
 
+@pytest.mark.parametrize(
+    ("node_mv", "nanoamps", "says"),
+    [
+        (187, 241171, "about 215 ohm"),  # 0.187 V / 241 uA is 775 ohm, and the shunt's 560 are not the part's
+        (570, 222937, "about 2 kohm"),
+        (140, 243497, "less than 128 ohm"),  # a code of the divider is 31 mV
+        (0, 243497, "less than 128 ohm"),
+    ],
+)
+def test_a_short_is_told_without_the_shunt_below_it(
+    tmp_path: Path, node_mv: int, nanoamps: int, says: str
+) -> None:
+    outcome = judge(ended(tmp_path, "short", short_mv=node_mv, short_na=nanoamps), FILM)
+    assert outcome.findings[0].evidence.endswith(f"flowed: {says}.")
+
+
 @pytest.mark.parametrize("end", ["aborted", "link_lost", "fault"])
 def test_an_interrupted_dwell_is_no_result(end: str) -> None:
     outcome = judge(trace("film_47n"), FILM, end=end)

@@ -9,6 +9,8 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 
+import numpy as np
+
 from dwellbench.judging.case import Case
 from dwellbench.judging.say import si, volts
 from dwellbench.limits.decide import UNDECIDED, UNFIT
@@ -17,6 +19,8 @@ from dwellbench.outcome import Finding
 
 MEASURED = ("complete", "finished")
 """Ends after which the whole trace is judged."""
+
+_CODE_V = 1.024 / 32768 * 1001  # one code of the part's divider: below it a short's resistance is not told
 
 AGAIN = "Run the test again."
 
@@ -47,11 +51,17 @@ def _short(case: Case) -> Ended:
     node_V, amps = case.trace.number("short_mv"), case.trace.number("short_na")
     evidence = "The voltage did not rise although the whole current of the charge path flowed."
     if node_V is not None and amps:
-        ohm = max(node_V * 1e-3 / (amps * 1e-9), 0.0)
-        evidence = (
-            f"{volts(node_V * 1e-3)} on the part while {si(amps * 1e-9, 'A')} flowed: about {si(ohm, 'ohm')}."
-        )
+        part_V = node_V * 1e-3 - amps * 1e-9 * _shunt_ohm(case.trace)
+        ohm = max(part_V, _CODE_V) / (amps * 1e-9)
+        about = "about" if part_V >= _CODE_V else "less than"
+        evidence = f"{volts(max(part_V, 0.0))} on the part while {si(amps * 1e-9, 'A')} flowed: {about} {si(ohm, 'ohm')}."
     return Ended(UNFIT, "The part is shorted; it never took charge.", Finding("short", evidence), "scrap")
+
+
+def _shunt_ohm(trace: Trace) -> float:
+    """The shunt that the current flowed through, ohms: what was read is the node above part and shunt together."""
+    before = np.isin(trace.stage, ("prove", "look", "charge"))
+    return float(trace.shunt_ohm[before][-1]) if before.any() else 0.0
 
 
 def _open(case: Case) -> Ended:
