@@ -43,6 +43,8 @@ def test_any_label_and_note_is_kept_and_found(tmp_path: Path, text: str) -> None
         ("0.1 \u00b5F", "0.1 \u03bcf"),  # the micro sign of the keyboard and the Greek letter
         ("Gro\u00dfe Kiste", "GROSSE"),
         ("\ufb01lm", "film"),
+        ("\uff14\uff17n", "47N"),  # wide digits, as an East Asian keyboard gives them
+        ("e\u0301tage", "\u00e9tage"),  # accent apart, as some systems write names of files
     ],
 )
 @pytest.mark.parametrize("where", ["label", "note"])
@@ -85,7 +87,8 @@ def test_every_way_to_narrow_and_page(tmp_path: Path) -> None:
         assert found(verdict="fit") == [2, 1]
         assert found(marking="8u 450V") == [3]
         assert found(state="interrupted") == [3]
-        assert found(since="2026-01-06") == [3, 2]
+        assert found(since="2026-01-06") == found(since="2026-01-06T00:00:00Z") == [3, 2]
+        assert found(until="2026-01-06T00:00:00Z") == [1]
         assert found(until="2026-01-06") == [1]
         assert found(since="2026-01-06", until="2026-01-07", label="b", text="FILM") == [2]
         assert found(text="") == [3, 2, 1]

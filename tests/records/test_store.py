@@ -97,7 +97,11 @@ def test_calibrations_are_kept_once_a_version_and_a_box(tmp_path: Path) -> None:
         for number in (1, 1, 2, 1):
             whole(store, calibration={"id": number})
         whole(store, OTHER_BOX, calibration={"id": 1})
-        store.keep_calibration({"box": BOX, "model": "reference"}, {"id": 3})
+        for document in (
+            {"id": 3, "made": 1},
+            {"made": 1, "id": 3},
+        ):  # the order of members is no other version
+            store.keep_calibration({"box": BOX, "model": "reference"}, document)
         assert [one["id"] for one in store.calibrations(BOX)] == [1, 2, 3]
         assert [one["id"] for one in store.calibrations(OTHER_BOX)] == [1]
         assert [store.record(number)["calibration"]["id"] for number in (1, 2, 3, 4)] == [1, 1, 2, 1]

@@ -7,7 +7,7 @@ import sqlite3
 import subprocess
 import sys
 from collections.abc import Iterator
-from contextlib import contextmanager
+from contextlib import ExitStack, contextmanager
 from pathlib import Path
 
 import pytest
@@ -162,6 +162,41 @@ def test_a_file_kept_busy_for_ever_is_an_error_and_what_was_held_is_written_late
             assert writer.open
         writer.end("complete", None, OUTCOME)
         assert store.samples(1).tolist() == given
+
+
+def test_a_run_waits_less_for_another_program_than_the_box_waits_for_its_host(tmp_path: Path) -> None:
+    """The box ends a run after 2 s of silence. What SQLite was told before each write in mid-run, and after it."""
+    told: list[str] = []
+    with Store(tmp_path / "r.db", wait_s=4.0) as store:
+        writer = begin(store)
+        store._connection.set_trace_callback(told.append)
+        writer.rows(ROWS[:10])
+        store._connection.set_trace_callback(None)
+    waits = [int(text.split()[-1]) for text in told if "busy_timeout" in text]
+    assert len(waits) == 2 and waits[0] <= 200 and waits[1] == 4000
+    assert "busy_timeout" in told[0] and "busy_timeout" in told[-1]
+
+
+def test_a_store_that_cannot_close_its_run_lets_the_box_go(tmp_path: Path) -> None:
+    path = tmp_path / "r.db"
+    store = Store(path, wait_s=0.02)
+    writer = begin(store)
+    writer.rows(ROWS[:20])
+    with kept_busy(path), pytest.raises(StoreError, match="being written by another program"):
+        store.close()
+    with Store(path) as again:
+        assert [one.id for one in again.unfinished()] == [1]
+        assert whole(again) == 2
+    assert writer.open
+
+
+def test_an_error_in_the_middle_is_not_hidden_by_one_at_the_end(tmp_path: Path) -> None:
+    path = tmp_path / "r.db"
+    busy = ExitStack()
+    with busy, pytest.raises(KeyError), Store(path, wait_s=0.02) as store:
+        begin(store)
+        busy.enter_context(kept_busy(path))
+        raise KeyError("what went wrong first")
 
 
 def test_opening_a_busy_file_waits_only_so_long(tmp_path: Path) -> None:

@@ -54,7 +54,13 @@ class Store:
     def __exit__(
         self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
     ) -> None:
-        self.close()
+        try:
+            self.close()
+        except StoreError:
+            if (
+                error is None
+            ):  # what went wrong first is what the user must hear of; the run is closed at the next start
+                raise
 
     def close(self) -> None:
         """Close the file. A run that is still being written is closed as interrupted."""
@@ -62,6 +68,8 @@ class Store:
             for writer in self._writers:
                 writer.interrupted(CLOSED)
         finally:
+            for writer in self._writers:
+                writer.let_go()
             self._writers = []
             self._connection.close()
 

@@ -79,6 +79,10 @@ class RunWriter:
         """End the run as interrupted, and say why; return the record's number."""
         return self._close(Closing("interrupted", None, None, why, outcome))
 
+    def let_go(self) -> None:
+        """Let the box go without an end: the run is closed as interrupted by whoever opens the records next."""
+        self._lock.release()
+
     def _take_rows(self) -> None:
         if self._rows:
             self._pending.append((_BATCH, (self.id, self._batches, pack(self._rows))))
