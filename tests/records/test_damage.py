@@ -91,6 +91,13 @@ def test_a_changed_calibration_is_found(tmp_path: Path) -> None:
         assert [one.record for one in store.check()] == [None]
 
 
+def test_a_changed_model_of_a_box_is_found_in_every_record_of_it(tmp_path: Path) -> None:
+    filled(tmp_path / "r.db")
+    with Store(tmp_path / "r.db") as store:
+        store._connection.execute("UPDATE box SET model = 'another'")
+        assert [one.record for one in store.check()] == [f"R{number}" for number in range(1, 9)]
+
+
 def contents(store: Store) -> list[Any]:
     """Everything a reader is shown."""
     names = [one.id for one in store.records(1000)]

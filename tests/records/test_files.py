@@ -15,7 +15,6 @@ from tests.records.contents import OUTCOME, ROWS, begin, rows, whole
 from dwellbench.errors import StoreError
 from dwellbench.records import Store
 
-
 POSIX = pytest.mark.skipif(not hasattr(os, "geteuid"), reason="POSIX")
 
 

@@ -31,6 +31,15 @@ def test_what_is_written_is_found(tmp_path: Path) -> None:
         assert store.check() == []
 
 
+def test_events_stay_in_the_order_they_came(tmp_path: Path) -> None:
+    with Store(tmp_path / "r.db") as store:
+        writer = begin(store)
+        for t in (9, 30, 4, 200, 1, *range(1000, 1012)):
+            writer.event("log", {"t": t})
+        writer.end("complete", None, OUTCOME)
+        assert [one["t"] for one in store.record(1)["events"]] == [9, 30, 4, 200, 1, *range(1000, 1012)]
+
+
 def test_samples_of_a_closed_run_are_in_one_piece(tmp_path: Path) -> None:
     with Store(tmp_path / "r.db") as store:
         whole(store)
